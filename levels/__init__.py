@@ -1,0 +1,1 @@
+"""Curated data and exact physics of laser-cooled atoms; knows nothing of HTTP."""
