@@ -1,0 +1,236 @@
+"""Sublevels of one level in a magnetic field: energies, slopes, quadratic coefficients and states.
+
+Each m-block of `blocks` is diagonalised by itself: sizes 1 and 2 in closed form, the rest by LAPACK. Inside a block
+adiabatic levels never cross, so the k-th energy carries the k-th zero-field F and nothing is tracked along the field.
+Slopes are exact (Hellmann-Feynman) and quadratic coefficients come from second-order perturbation theory.
+
+Field in gauss, signed along z; energies in MHz from the level's hyperfine centroid; `slope` is dE/dB at the field;
+`quadratic` is half the second derivative. The moment along z is -dE/dB.
+"""
+
+from dataclasses import dataclass
+from functools import lru_cache
+
+import numpy as np
+from numpy.typing import ArrayLike, NDArray
+
+from levels.blocks import Block, block, block_ms, hyperfine_shift
+from levels.constants import MU_B_MHZ_PER_GAUSS
+from levels.errors import NotPublished, OutsideValidity, UnknownName
+from levels.records import Level
+
+Array = NDArray[np.float64]
+HZ_PER_MHZ = 1e6
+LARGEST_FIELD_GAUSS = 1e6
+
+
+@dataclass(frozen=True, slots=True)
+class Constants:
+    """The bare numbers of one level that its Hamiltonian needs (A, B, C in MHz, g factors in Bohr magnetons)."""
+
+    twice_J: int
+    twice_I: int
+    A_mhz: float = 0.0
+    B_mhz: float = 0.0
+    C_mhz: float = 0.0
+    g_J: float = 0.0
+    g_I: float = 0.0
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Eigen:
+    """One block solved at n fields: energies (n, d), states as columns (n, d, d), and the F of each rank (d,)."""
+
+    block: Block
+    twice_F: tuple[int, ...]
+    energy_mhz: Array
+    states: Array
+    zeeman_mhz_per_gauss: Array  # diagonal of dH/dB, shape (d,)
+
+    def slope_mhz_per_gauss(self) -> Array:
+        """Return dE/dB, shape (n, d)."""
+        slope: Array = np.matmul(self.states.swapaxes(-1, -2) ** 2, self.zeeman_mhz_per_gauss)
+        return slope
+
+    def zeeman_in_eigenbasis(self) -> Array:
+        """Return dH/dB between the eigenstates, shape (n, d, d)."""
+        return self.states.swapaxes(-1, -2) @ (self.zeeman_mhz_per_gauss[:, None] * self.states)
+
+    def inverse_gaps(self) -> Array:
+        """Return 1/(E_k - E_l) off the diagonal and zero on it, shape (n, d, d)."""
+        gaps = self.energy_mhz[:, :, None] - self.energy_mhz[:, None, :]
+        np.einsum("nii->ni", gaps)[...] = np.inf
+        return 1.0 / gaps
+
+    def quadratic_mhz_per_gauss2(self) -> Array:
+        """Return half of d2E/dB2 by second-order perturbation theory, shape (n, d)."""
+        result: Array = np.einsum("nkl,nkl->nk", self.zeeman_in_eigenbasis() ** 2, self.inverse_gaps())
+        return result
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Sublevels:
+    """Every sublevel of a level at n fields; labels have shape (s,), numbers (n, s), ordered by F and then m.
+
+    `twice_mJ` and `twice_mI` are the high-field labels: those the sublevel reaches as the field grows along its sign.
+    """
+
+    level: Level
+    field_gauss: Array
+    twice_F: NDArray[np.int64]
+    twice_m: NDArray[np.int64]
+    twice_mJ: NDArray[np.int64]
+    twice_mI: NDArray[np.int64]
+    zero_field_mhz: Array
+    energy_mhz: Array
+    slope_mhz_per_gauss: Array
+    quadratic_hz_per_gauss2: Array
+
+    @property
+    def shift_mhz(self) -> Array:
+        """Energy above the same sublevel's at zero field, shape (n, s)."""
+        return self.energy_mhz - self.zero_field_mhz
+
+    @property
+    def moment_mu_b(self) -> Array:
+        """Magnetic moment along z in Bohr magnetons, -dE/dB, shape (n, s)."""
+        return -self.slope_mhz_per_gauss / MU_B_MHZ_PER_GAUSS
+
+
+def constants_of(level: Level) -> Constants:
+    """Read the bare numbers of a level; a constant that matters and is not published raises NotPublished.
+
+    A is needed for J and I both above zero, g_J for J above zero, g_I for I above zero. An absent B is taken as zero
+    and `cautions` says so; an absent C is zero by the trade's convention.
+    """
+    needs = (
+        ("A", level.A, level.twice_J > 0 and level.twice_I > 0),
+        ("g_J", level.g_J, level.twice_J > 0),
+        ("g_I", level.g_I, level.twice_I > 0),
+    )
+    for name, constant, needed in needs:
+        if needed and constant is None:
+            hint = "a lab overlay can supply it"
+            raise NotPublished(name, f"{level.atom} {level.name}", hint)
+    A, B, C, g_J, g_I = (0.0 if q is None else q.value for q in (level.A, level.B, level.C, level.g_J, level.g_I))
+    return Constants(level.twice_J, level.twice_I, A, B, C, g_J, g_I)
+
+
+def cautions(level: Level) -> tuple[str, ...]:
+    """Say what the constants of a level leave out of its sublevels."""
+    if level.B is None and level.twice_J >= 2 and level.twice_I >= 2:
+        return (f"B of {level.atom} {level.name} is not in the catalogue and taken as zero",)
+    return ()
+
+
+def as_fields(field_gauss: ArrayLike) -> Array:
+    """Check a field or an array of fields and return it as shape (n,)."""
+    fields = np.atleast_1d(np.asarray(field_gauss, dtype=np.float64))
+    if not np.all(np.abs(fields) <= LARGEST_FIELD_GAUSS):
+        worst = float(fields[np.argmax(~(np.abs(fields) <= LARGEST_FIELD_GAUSS))])
+        raise OutsideValidity("field", worst, f"from -{LARGEST_FIELD_GAUSS:g} to {LARGEST_FIELD_GAUSS:g} G")
+    return fields
+
+
+@lru_cache(maxsize=4096)
+def ranked_F(constants: Constants, twice_m: int) -> tuple[int, ...]:
+    """Order the F of one m-block by their zero-field energies: the label of each rank, at any field."""
+    labels = block(constants.twice_J, constants.twice_I, twice_m).twice_F
+    if len(labels) == 1:
+        return labels
+    energies = {F: zero_field_mhz(constants, F) for F in labels}
+    ranked = sorted(labels, key=energies.__getitem__)
+    gaps = np.diff([energies[F] for F in ranked])
+    if not np.min(gaps) > 0:
+        raise OutsideValidity("A", constants.A_mhz, "hyperfine levels coincide at zero field, so F labels nothing")
+    return tuple(ranked)
+
+
+def zero_field_mhz(constants: Constants, twice_F: int) -> float:
+    """Compute the zero-field energy of one F from the level's centroid, in MHz."""
+    return hyperfine_shift(
+        constants.twice_J, constants.twice_I, twice_F, constants.A_mhz, constants.B_mhz, constants.C_mhz
+    )
+
+
+def _closed_form_of_two(diagonal: Array, coupling: float) -> tuple[Array, Array]:
+    """Solve [[a, c], [c, b]] at n fields: energies (n, 2) rising, states as columns (n, 2, 2)."""
+    mean, half = diagonal.mean(axis=-1), (diagonal[:, 0] - diagonal[:, 1]) / 2
+    radius = np.hypot(half, coupling)
+    angle = np.arctan2(coupling, half) / 2
+    cos, sin = np.cos(angle), np.sin(angle)
+    energy = np.stack([mean - radius, mean + radius], axis=-1)
+    states = np.stack([np.stack([-sin, cos], axis=-1), np.stack([cos, sin], axis=-1)], axis=-2)
+    return energy, states
+
+
+def solve_block(constants: Constants, twice_m: int, fields: Array) -> Eigen:
+    """Diagonalise one m-block at n fields."""
+    part = block(constants.twice_J, constants.twice_I, twice_m)
+    ranked = ranked_F(constants, twice_m)
+    zeeman = MU_B_MHZ_PER_GAUSS * (constants.g_J * part.J_z + constants.g_I * part.I_z)
+    still = constants.A_mhz * part.dipole + constants.B_mhz * part.quadrupole + constants.C_mhz * part.octupole
+    if part.size == 1:
+        energy = still[0, 0] + fields[:, None] * zeeman
+        return Eigen(part, ranked, energy, np.ones((fields.size, 1, 1)), zeeman)
+    if part.size == 2:
+        energy, states = _closed_form_of_two(np.diag(still) + fields[:, None] * zeeman, float(still[0, 1]))
+        return Eigen(part, ranked, energy, states, zeeman)
+    matrix = np.repeat(still[None], fields.size, axis=0)
+    np.einsum("nii->ni", matrix)[...] += fields[:, None] * zeeman
+    energy, states = np.linalg.eigh(matrix)
+    return Eigen(part, ranked, energy, states, zeeman)
+
+
+def high_field_labels(constants: Constants, twice_m: int) -> tuple[tuple[int, int], ...]:
+    """Return (2 m_J, 2 m_I) of each rank of an m-block in a strong positive field.
+
+    There E/B -> (g_J - g_I) m_J + g_I m, so rank follows m_J, rising for g_J > g_I.
+    """
+    part = block(constants.twice_J, constants.twice_I, twice_m)
+    pairs = list(zip(part.twice_mJ, part.twice_mI, strict=True))
+    return tuple(pairs if constants.g_J >= constants.g_I else reversed(pairs))
+
+
+def find_sublevel(constants: Constants, twice_F: int, twice_m: int) -> int:
+    """Return the rank of (F, m) inside its block, or raise UnknownName with the labels that exist."""
+    allowed = range(abs(constants.twice_J - constants.twice_I), constants.twice_J + constants.twice_I + 1, 2)
+    given = f"{_text(twice_F)},{_text(twice_m)}"
+    if twice_F not in allowed:
+        raise UnknownName("sublevel", given, hint=f"F is one of {', '.join(map(_text, allowed))}")
+    if abs(twice_m) > twice_F or (twice_F - twice_m) % 2:
+        hint = f"m of F = {_text(twice_F)} runs from {_text(-twice_F)} to {_text(twice_F)} in steps of 1"
+        raise UnknownName("sublevel", given, hint=hint)
+    return ranked_F(constants, twice_m).index(twice_F)
+
+
+def _text(twice: int) -> str:
+    return f"{twice}/2" if twice % 2 else str(twice // 2)
+
+
+def labels_of(constants: Constants) -> list[tuple[int, int]]:
+    """List (2F, 2m) of every sublevel by F and then m: the order of every table."""
+    lowest, highest = abs(constants.twice_J - constants.twice_I), constants.twice_J + constants.twice_I
+    return [(F, m) for F in range(lowest, highest + 1, 2) for m in range(-F, F + 1, 2)]
+
+
+def sublevels(level: Level, field_gauss: ArrayLike) -> Sublevels:
+    """Solve every sublevel of a level at one or many fields.
+
+    `field_gauss` is a number or an array of n fields. Neglected: the mixing with other levels of the multiplet and the
+    diamagnetic shift; see `multiplet` for when that matters.
+    """
+    constants, fields = constants_of(level), as_fields(field_gauss)
+    order = {label: k for k, label in enumerate(labels_of(constants))}
+    numbers = np.empty((3, fields.size, len(order)))
+    marks = np.empty((4, len(order)), dtype=np.int64)
+    for twice_m in block_ms(constants.twice_J, constants.twice_I):
+        eigen = solve_block(constants, twice_m, fields)
+        at = [order[F, twice_m] for F in eigen.twice_F]
+        numbers[0][:, at] = eigen.energy_mhz
+        numbers[1][:, at] = eigen.slope_mhz_per_gauss()
+        numbers[2][:, at] = eigen.quadratic_mhz_per_gauss2() * HZ_PER_MHZ
+        strong = high_field_labels(constants, twice_m)
+        marks[:, at] = [eigen.twice_F, [twice_m] * len(at), [p[0] for p in strong], [p[1] for p in strong]]
+    still = np.array([zero_field_mhz(constants, int(F)) for F in marks[0]])
+    return Sublevels(level, fields, *marks, still, *numbers)
