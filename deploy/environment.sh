@@ -1,0 +1,59 @@
+# Makes the private environments of deploy/serve and deploy/test; sourced by both, never run.
+# An environment is made once and again only when its list of pinned packages or the Python changes.
+
+root=$(cd "$(dirname "${BASH_SOURCE[0]}")/.." && pwd)
+
+fail() { printf '%s: %s\n' "$(basename "$0")" "$*" >&2; exit 1; }
+
+find_python() {
+    local name found=""
+    for name in ${PYTHON:-} python3.13 python3.12 python3.11 python3 python; do
+        command -v "$name" >/dev/null 2>&1 || continue
+        found=yes
+        if "$name" -c 'import sys; sys.exit(not (3, 11) <= sys.version_info[:2] <= (3, 13))' >/dev/null 2>&1; then
+            command -v "$name"
+            return
+        fi
+    done
+    [ -n "$found" ] && fail "Python 3.11, 3.12 or 3.13 is needed, only another version was found; name one with PYTHON=/path/to/python3.11"
+    fail "Python 3.11, 3.12 or 3.13 is needed and no python3 was found on the PATH"
+}
+
+digest_of() {  # one digest for the pinned packages and the interpreter they are installed for
+    "$1" - "$2" <<'PY'
+import hashlib, pathlib, sys
+print(hashlib.sha256(pathlib.Path(sys.argv[1]).read_bytes() + sys.version.encode() + sys.executable.encode()).hexdigest())
+PY
+}
+
+install_into() {  # environment, pinned packages
+    "$1/bin/python" -m pip install --quiet --disable-pip-version-check --no-input --no-deps --require-hashes -r "$2" \
+        || fail "the packages of $2 could not be installed: the first start needs a Python package index (see pip's own message above)"
+    "$1/bin/python" - "$root" <<'PY'
+import pathlib, sys, sysconfig
+root, bin_ = sys.argv[1], pathlib.Path(sys.prefix, "bin")
+pathlib.Path(sysconfig.get_path("purelib"), "sublevel.pth").write_text(root + "\n")
+command = bin_ / "sublevel"
+command.write_text(f"#!{bin_ / 'python'}\nfrom service.cli import main\n\nraise SystemExit(main())\n")
+command.chmod(0o755)
+PY
+}
+
+environment() {  # name, pinned packages: leaves the interpreter's path in $python
+    local python3 place digest
+    python3=$(find_python) || exit 1
+    place="$root/.venv/$1"
+    digest=$(digest_of "$python3" "$2") || fail "$python3 does not run"
+    python="$place/bin/python"
+    [ "$(cat "$place/made-from" 2>/dev/null)" = "$digest" ] && return
+    printf '%s: making the environment %s (once)\n' "$(basename "$0")" "$place" >&2
+    rm -rf "$place"
+    mkdir -p "$root/.venv" || fail "cannot write to $root"
+    "$python3" -m venv "$place" >"$root/.venv/$1.log" 2>&1 || {
+        cat "$root/.venv/$1.log" >&2
+        rm -rf "$place"
+        fail "$python3 could not make a virtual environment: its venv and ensurepip modules are needed (on Debian and Ubuntu the package python3-venv)"
+    }
+    install_into "$place" "$2"
+    printf '%s\n' "$digest" >"$place/made-from"
+}
