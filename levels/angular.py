@@ -15,6 +15,7 @@ import sympy
 from sympy.physics.wigner import wigner_3j, wigner_6j
 
 from levels.errors import OutsideValidity
+from levels.notation import format_half
 
 LARGEST_TWICE_J = 200
 
@@ -24,31 +25,26 @@ def half(twice: int) -> Any:
     return sympy.Rational(twice, 2)
 
 
-def spoken(twice: int) -> str:
-    """Write a doubled number as the trade does: `3/2`, `2`, `-1/2`."""
-    return f"{twice}/2" if twice % 2 else str(twice // 2)
-
-
 def check_momentum(name: str, twice_j: int) -> None:
     """Refuse a negative or very large angular momentum."""
     if not 0 <= twice_j <= LARGEST_TWICE_J:
-        raise OutsideValidity(name, spoken(twice_j), f"an angular momentum from 0 to {LARGEST_TWICE_J // 2}")
+        raise OutsideValidity(name, format_half(twice_j), f"an angular momentum from 0 to {LARGEST_TWICE_J // 2}")
 
 
 def check_projection(name: str, twice_j: int, twice_m: int) -> None:
     """Refuse a projection that its angular momentum does not have."""
     if (twice_j - twice_m) % 2:
-        raise OutsideValidity(name, spoken(twice_m), f"differs from j = {spoken(twice_j)} by an integer")
+        raise OutsideValidity(name, format_half(twice_m), f"differs from j = {format_half(twice_j)} by an integer")
 
 
 def triangle_reason(twice_a: int, twice_b: int, twice_c: int) -> str:
     """Say why three angular momenta do not couple, or return an empty string when they do."""
     if (twice_a + twice_b + twice_c) % 2:
-        return f"{spoken(twice_a)}, {spoken(twice_b)} and {spoken(twice_c)} do not add up to an integer"
+        return f"{format_half(twice_a)}, {format_half(twice_b)} and {format_half(twice_c)} do not add up to an integer"
     if not abs(twice_a - twice_b) <= twice_c <= twice_a + twice_b:
         return (
-            f"triangle rule: {spoken(twice_c)} is not between |{spoken(twice_a)} - {spoken(twice_b)}| "
-            f"and {spoken(twice_a)} + {spoken(twice_b)}"
+            f"triangle rule: {format_half(twice_c)} is not between |{format_half(twice_a)} - {format_half(twice_b)}| "
+            f"and {format_half(twice_a)} + {format_half(twice_b)}"
         )
     return ""
 
@@ -56,10 +52,10 @@ def triangle_reason(twice_a: int, twice_b: int, twice_c: int) -> str:
 def three_j_reason(j1: int, j2: int, j3: int, m1: int, m2: int, m3: int) -> str:
     """Say which selection rule makes a 3j symbol zero, or return an empty string (all arguments doubled)."""
     if m1 + m2 + m3:
-        return f"projections {spoken(m1)}, {spoken(m2)} and {spoken(m3)} do not sum to zero"
+        return f"projections {format_half(m1)}, {format_half(m2)} and {format_half(m3)} do not sum to zero"
     for j, m in ((j1, m1), (j2, m2), (j3, m3)):
         if abs(m) > j:
-            return f"projection {spoken(m)} is larger than {spoken(j)}"
+            return f"projection {format_half(m)} is larger than {format_half(j)}"
     reason = triangle_reason(j1, j2, j3)
     if not reason and m1 == m2 == m3 == 0 and (j1 + j2 + j3) // 2 % 2:
         reason = "all projections are zero and the angular momenta sum to an odd number"
@@ -110,7 +106,7 @@ def six_j(a: int, b: int, c: int, d: int, e: int, f: int) -> Any:
 def clebsch_gordan_reason(j1: int, m1: int, j2: int, m2: int, j: int, m: int) -> str:
     """Say which selection rule makes <j1 m1 j2 m2 | j m> zero, or return an empty string."""
     if m1 + m2 != m:
-        return f"m = {spoken(m)} is not m1 + m2 = {spoken(m1 + m2)}"
+        return f"m = {format_half(m)} is not m1 + m2 = {format_half(m1 + m2)}"
     return three_j_reason(j1, j2, j, m1, m2, -m)
 
 
@@ -144,9 +140,9 @@ def lande_shares(twice_J: int, twice_L: int, twice_S: int) -> tuple[Fraction, Fr
     for name, j in (("J", twice_J), ("L", twice_L), ("S", twice_S)):
         check_momentum(name, j)
     if twice_L % 2:
-        raise OutsideValidity("L", spoken(twice_L), "an integer")
+        raise OutsideValidity("L", format_half(twice_L), "an integer")
     if reason := triangle_reason(twice_L, twice_S, twice_J):
-        raise OutsideValidity("J", spoken(twice_J), f"couples from L and S ({reason})")
+        raise OutsideValidity("J", format_half(twice_J), f"couples from L and S ({reason})")
     return _projection_factor(twice_L, twice_S, twice_J), _projection_factor(twice_S, twice_L, twice_J)
 
 
@@ -156,7 +152,7 @@ def hyperfine_shares(twice_F: int, twice_J: int, twice_I: int) -> tuple[Fraction
     E/h = g_F (muB/h) m B with g_F = g_J w_J + g_I w_I and g_I in Bohr magnetons; both are zero for F = 0.
     """
     if reason := triangle_reason(twice_J, twice_I, twice_F):
-        raise OutsideValidity("F", spoken(twice_F), f"couples from J and I ({reason})")
+        raise OutsideValidity("F", format_half(twice_F), f"couples from J and I ({reason})")
     return _projection_factor(twice_J, twice_I, twice_F), _projection_factor(twice_I, twice_J, twice_F)
 
 
@@ -166,7 +162,9 @@ def _exact_square(symbol: Any) -> Fraction:
 
 
 @lru_cache(maxsize=16384)
-def line_strength(twice_J: int, twice_J_up: int, twice_I: int, twice_F: int, twice_F_up: int, rank: int = 1) -> Fraction:
+def line_strength(
+    twice_J: int, twice_J_up: int, twice_I: int, twice_F: int, twice_F_up: int, rank: int = 1
+) -> Fraction:
     """Compute S(F,F'), the exact relative strength of one hyperfine component of a line.
 
     S = (2F'+1)(2J+1){J J' k; F' F I}^2 with k the multipole rank: the share of F' in all the absorption from F, so

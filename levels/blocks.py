@@ -21,12 +21,15 @@ import numpy as np
 from numpy.typing import NDArray
 
 Matrix = NDArray[np.float64]
+Product = Callable[[Any, Any], Any]
 
 
 @dataclass(frozen=True, slots=True, eq=False)
 class Block:
     """One value of m: its product states, its zero-field F labels and its operators, each of shape (d, d) or (d,)."""
 
+    twice_J: int
+    twice_I: int
     twice_m: int
     twice_mJ: tuple[int, ...]
     twice_mI: tuple[int, ...]
@@ -63,7 +66,7 @@ def _dipole(twice_J: int, twice_I: int, twice_mJ: tuple[int, ...], twice_mI: tup
     return matrix
 
 
-def quadrupole_of(product: Any, J: float, I: float, one: Any = 1.0, times: Callable[[Any, Any], Any] | None = None) -> Any:  # noqa: E741
+def quadrupole_of(product: Any, J: float, I: float, one: Any = 1.0, times: Product | None = None) -> Any:
     """Evaluate Q of the module's head as a polynomial in X = I.J (a matrix, or the number K/2 of one F)."""
     if J < 1 or I < 1:
         return 0.0 * product
@@ -72,7 +75,7 @@ def quadrupole_of(product: Any, J: float, I: float, one: Any = 1.0, times: Calla
     return (3 * times(product, product) + 1.5 * product - squares * one) / (2 * I * (2 * I - 1) * J * (2 * J - 1))
 
 
-def octupole_of(product: Any, J: float, I: float, one: Any = 1.0, times: Callable[[Any, Any], Any] | None = None) -> Any:  # noqa: E741
+def octupole_of(product: Any, J: float, I: float, one: Any = 1.0, times: Product | None = None) -> Any:
     """Evaluate O of the module's head as a polynomial in X = I.J (a matrix, or the number K/2 of one F)."""
     if J < 1.5 or I < 1.5:
         return 0.0 * product
@@ -91,7 +94,7 @@ def block(twice_J: int, twice_I: int, twice_m: int) -> Block:
     highest = min(twice_J, twice_m + twice_I)
     twice_mJ = tuple(range(lowest, highest + 1, 2))
     twice_mI = tuple(twice_m - mj for mj in twice_mJ)
-    J, I = twice_J / 2, twice_I / 2  # noqa: E741
+    J, I = twice_J / 2, twice_I / 2
     dipole = _dipole(twice_J, twice_I, twice_mJ, twice_mI)
     one = np.eye(len(twice_mJ))
     operators = (
@@ -104,7 +107,9 @@ def block(twice_J: int, twice_I: int, twice_m: int) -> Block:
     for operator in operators:
         operator.setflags(write=False)
     smallest_F = max(abs(twice_m), abs(twice_J - twice_I))
-    return Block(twice_m, twice_mJ, twice_mI, tuple(range(smallest_F, twice_J + twice_I + 1, 2)), *operators)
+    return Block(
+        twice_J, twice_I, twice_m, twice_mJ, twice_mI, tuple(range(smallest_F, twice_J + twice_I + 1, 2)), *operators
+    )
 
 
 def hyperfine_shift(
@@ -115,11 +120,12 @@ def hyperfine_shift(
     >>> round(hyperfine_shift(3, 3, 6, 84.7185, 12.4965), 5)  # 87Rb 5p 2P3/2, F = 3
     193.74075
     """
-    J, I, F = twice_J / 2, twice_I / 2, twice_F / 2  # noqa: E741
+    J, I, F = twice_J / 2, twice_I / 2, twice_F / 2
     product = (F * (F + 1) - J * (J + 1) - I * (I + 1)) / 2
     return float(A_mhz * product + B_mhz * quadrupole_of(product, J, I) + C_mhz * octupole_of(product, J, I))
 
 
+@lru_cache(maxsize=4096)
 def hyperfine_weights(twice_J: int, twice_I: int, twice_F: int) -> tuple[float, float, float]:
     """Return dE/dA, dE/dB and dE/dC of one zero-field F: the weights that make its energy from A, B and C."""
     return (

@@ -77,6 +77,7 @@ class Line:
     aliases: tuple[str, ...] = ()
     nominal_nm: float = 0.0
     photons: int = 1
+    induced: str = ""  # "hyperfine" or "magnetic field" where J and the multipole alone forbid the line
     centroid: Quantity | None = None
     centroid_isotope: str = ""
     wavelength: Quantity | None = None

@@ -17,6 +17,8 @@ from numpy.typing import ArrayLike, NDArray
 from levels.blocks import Block, block, block_ms, hyperfine_shift
 from levels.constants import MU_B_MHZ_PER_GAUSS
 from levels.errors import NotPublished, OutsideValidity, UnknownName
+from levels.fieldgrid import on_grid
+from levels.notation import format_half, format_sublevel
 from levels.records import Level
 
 Array = NDArray[np.float64]
@@ -58,9 +60,9 @@ class Eigen:
 
     def inverse_gaps(self) -> Array:
         """Return 1/(E_k - E_l) off the diagonal and zero on it, shape (n, d, d)."""
-        gaps = self.energy_mhz[:, :, None] - self.energy_mhz[:, None, :]
+        gaps: Array = self.energy_mhz[:, :, None] - self.energy_mhz[:, None, :]
         np.einsum("nii->ni", gaps)[...] = np.inf
-        return 1.0 / gaps
+        return np.reciprocal(gaps)
 
     def quadratic_mhz_per_gauss2(self) -> Array:
         """Return half of d2E/dB2 by second-order perturbation theory, shape (n, d)."""
@@ -195,17 +197,15 @@ def high_field_labels(constants: Constants, twice_m: int) -> tuple[tuple[int, in
 def find_sublevel(constants: Constants, twice_F: int, twice_m: int) -> int:
     """Return the rank of (F, m) inside its block, or raise UnknownName with the labels that exist."""
     allowed = range(abs(constants.twice_J - constants.twice_I), constants.twice_J + constants.twice_I + 1, 2)
-    given = f"{_text(twice_F)},{_text(twice_m)}"
+    given = format_sublevel(twice_F, twice_m)
     if twice_F not in allowed:
-        raise UnknownName("sublevel", given, hint=f"F is one of {', '.join(map(_text, allowed))}")
+        raise UnknownName("sublevel", given, hint=f"F is one of {', '.join(map(format_half, allowed))}")
     if abs(twice_m) > twice_F or (twice_F - twice_m) % 2:
-        hint = f"m of F = {_text(twice_F)} runs from {_text(-twice_F)} to {_text(twice_F)} in steps of 1"
+        hint = (
+            f"m of F = {format_half(twice_F)} runs from {format_half(-twice_F)} to {format_half(twice_F)} in steps of 1"
+        )
         raise UnknownName("sublevel", given, hint=hint)
     return ranked_F(constants, twice_m).index(twice_F)
-
-
-def _text(twice: int) -> str:
-    return f"{twice}/2" if twice % 2 else str(twice // 2)
 
 
 def labels_of(constants: Constants) -> list[tuple[int, int]]:
@@ -214,23 +214,53 @@ def labels_of(constants: Constants) -> list[tuple[int, int]]:
     return [(F, m) for F in range(lowest, highest + 1, 2) for m in range(-F, F + 1, 2)]
 
 
-def sublevels(level: Level, field_gauss: ArrayLike) -> Sublevels:
+def _tolerance(constants: Constants, fields: Array, columns: int, quadratic: bool) -> Array:
+    """Return the rounding error that energies, slopes and quadratic coefficients of a long grid may carry."""
+    J, I = constants.twice_J / 2, constants.twice_I / 2
+    zeeman = MU_B_MHZ_PER_GAUSS * (abs(constants.g_J) * J + abs(constants.g_I) * I)
+    energy = abs(constants.A_mhz) * I * J + abs(constants.B_mhz) + abs(constants.C_mhz)
+    energy += zeeman * float(np.abs(fields).max())
+    sizes = (energy, zeeman, zeeman**2 / max(energy, 1e-9) * HZ_PER_MHZ)
+    share = (1e-13, 1e-12, 1e-9)
+    kept = 3 if quadratic else 2
+    return np.repeat([size * part for size, part in zip(sizes[:kept], share[:kept], strict=True)], columns)
+
+
+def sublevels(level: Level, field_gauss: ArrayLike, *, quadratic: bool = True) -> Sublevels:
     """Solve every sublevel of a level at one or many fields.
 
-    `field_gauss` is a number or an array of n fields. Neglected: the mixing with other levels of the multiplet and the
-    diamagnetic shift; see `multiplet` for when that matters.
+    `field_gauss` is a number or an array of n fields; long grids are evaluated through `fieldgrid`, to rounding error.
+    Without `quadratic` the quadratic coefficients are left out (shape (n, 0)), which saves time on a long grid. High-
+    field labels are those of a positive field unless every field is negative. Neglected: the mixing with other levels
+    of the multiplet and the diamagnetic shift.
     """
     constants, fields = constants_of(level), as_fields(field_gauss)
-    order = {label: k for k, label in enumerate(labels_of(constants))}
-    numbers = np.empty((3, fields.size, len(order)))
-    marks = np.empty((4, len(order)), dtype=np.int64)
+    labels = labels_of(constants)
+    order = {label: k for k, label in enumerate(labels)}
+    marks = np.empty((4, len(labels)), dtype=np.int64)
+    places = {}
     for twice_m in block_ms(constants.twice_J, constants.twice_I):
-        eigen = solve_block(constants, twice_m, fields)
-        at = [order[F, twice_m] for F in eigen.twice_F]
-        numbers[0][:, at] = eigen.energy_mhz
-        numbers[1][:, at] = eigen.slope_mhz_per_gauss()
-        numbers[2][:, at] = eigen.quadratic_mhz_per_gauss2() * HZ_PER_MHZ
+        ranked = ranked_F(constants, twice_m)
+        places[twice_m] = at = [order[F, twice_m] for F in ranked]
         strong = high_field_labels(constants, twice_m)
-        marks[:, at] = [eigen.twice_F, [twice_m] * len(at), [p[0] for p in strong], [p[1] for p in strong]]
+        if np.all(fields < 0):
+            strong = strong[::-1]
+        marks[:, at] = [ranked, [twice_m] * len(at), [p[0] for p in strong], [p[1] for p in strong]]
+
+    def columns(some: Array) -> Array:
+        numbers = np.empty((some.size, 3 if quadratic else 2, len(labels)))
+        for twice_m, at in places.items():
+            eigen = solve_block(constants, twice_m, some)
+            numbers[:, 0, at] = eigen.energy_mhz
+            numbers[:, 1, at] = eigen.slope_mhz_per_gauss()
+            if quadratic:
+                numbers[:, 2, at] = eigen.quadratic_mhz_per_gauss2() * HZ_PER_MHZ
+        return numbers.reshape(some.size, -1)
+
+    flat = on_grid(columns, fields, _tolerance(constants, fields, len(labels), quadratic))
+    numbers = flat.reshape(fields.size, -1, len(labels))
     still = np.array([zero_field_mhz(constants, int(F)) for F in marks[0]])
-    return Sublevels(level, fields, *marks, still, *numbers)
+    second = numbers[:, 2] if quadratic else np.empty((fields.size, 0))
+    F, m, mJ, mI = marks
+    energy, slope = numbers[:, 0], numbers[:, 1]
+    return Sublevels(level, fields, F, m, mJ, mI, still, energy, slope, second)
