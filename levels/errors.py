@@ -26,3 +26,15 @@ class OutsideValidity(ValueError):
     def __init__(self, parameter: str, given: object, allowed: str) -> None:
         self.parameter, self.given, self.allowed = parameter, given, allowed
         super().__init__(f"{parameter} = {given}: {allowed}")
+
+
+class DataError(ValueError):
+    """A data file that does not hold what the schema or the catalogue needs: which file, which key, why."""
+
+    def __init__(self, file: str, key: str, reason: str) -> None:
+        self.file, self.key, self.reason = file, key, reason
+        super().__init__(f"{file}: {key + ': ' if key else ''}{reason}")
+
+
+class OverlayError(DataError):
+    """A lab's overlay that cannot be used; nothing of it was applied."""

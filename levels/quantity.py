@@ -149,10 +149,8 @@ def in_unit(quantity: Quantity, unit: str) -> Quantity:
     """The same quantity in another unit of its dimension; `text` keeps the published digits with their own unit."""
     if unit == quantity.unit:
         return quantity
-    number, _, text_unit = quantity.text.partition(" ")
-    if (text_unit.strip() or "1") == quantity.unit and _NUMBER.fullmatch(number):
-        value = _exactly(number, quantity.unit, unit)  # rounds once: kHz clock frequencies have 16 digits
-    else:
+    value = _from_digits(quantity, unit)
+    if value is None:
         value = convert(quantity.value, quantity.unit, unit)
     spread = quantity.uncertainty
     return replace(
@@ -167,10 +165,15 @@ def in_unit(quantity: Quantity, unit: str) -> Quantity:
     )
 
 
-def _exactly(number: str, from_unit: str, to_unit: str) -> float:
+def _from_digits(quantity: Quantity, unit: str) -> float | None:
+    """The value converted from the published digits, which rounds once: clock frequencies in Hz have 16 of them."""
+    number, _, text_unit = quantity.text.partition(" ")
+    if (text_unit.strip() or "1") != quantity.unit or not _NUMBER.fullmatch(number):
+        return None
     exact, _ = _parse_exact(number)
-    numerator, denominator = factor(from_unit, to_unit)
-    return float(exact * Fraction(numerator) / Fraction(denominator))
+    numerator, denominator = factor(quantity.unit, unit)
+    is_same = float(exact) == quantity.value  # a value worked out from the digits keeps them in its text
+    return float(exact * Fraction(numerator) / Fraction(denominator)) if is_same else None
 
 
 def derived(
