@@ -16,12 +16,12 @@ published value (g_I of one isotope), which enters once.
 
 from collections.abc import Hashable, Mapping, Sequence
 from dataclasses import dataclass
+from functools import lru_cache
 
 import numpy as np
 from numpy.typing import NDArray
 
 from levels.blocks import Block, hyperfine_weights
-from levels.constants import MU_B_MHZ_PER_GAUSS
 from levels.quantity import Quantity
 from levels.records import Level
 from levels.sublevels import HZ_PER_MHZ, Eigen
@@ -47,52 +47,51 @@ class Movement:
 
 def movement(eigen: Eigen, field_gauss: Array, ranks: Sequence[int] | slice = slice(None)) -> Movement:
     """Differentiate the chosen ranks of one solved block by A, B, C (in MHz), g_J and g_I."""
-    part, states, n = eigen.block, eigen.states, field_gauss.size
-    steady = np.stack([part.dipole, part.quadrupole, part.octupole])
-    linear = MU_B_MHZ_PER_GAUSS * np.stack([part.J_z, part.I_z])
-    if part.size == 1:
-        numbers = np.zeros((4, 5, n, 1))
-        numbers[SLOPE, 3:] = linear[:, :, None]
-        numbers[SHIFT, 3:] = linear[:, :, None] * field_gauss[:, None]
-        numbers[ENERGY] = numbers[SHIFT]
-        numbers[ENERGY, :3] = steady
-        return Movement(numbers)
-    turn = states.swapaxes(-1, -2)
-    P = np.empty((5, n, part.size, part.size))
-    W = np.zeros_like(P)
-    P[:3] = turn @ (steady[:, None] @ states)
-    W[3:] = turn @ (linear[:, None, :, None] * states)
-    P[3:] = field_gauss[:, None, None] * W[3:]
-    return Movement(_perturbed(eigen, P, W, ranks))
+    given, chosen = eigen.given, eigen.states[:, :, ranks]
+    P_v, W_v = _applied(eigen, chosen, field_gauss)
+    numbers = np.zeros((4, len(NAMES), field_gauss.size, chosen.shape[-1]))
+    numbers[ENERGY] = numbers[SHIFT] = (chosen * P_v).sum(axis=-2)
+    numbers[SHIFT, :3] -= _zero_field_weights(given.block, given.twice_F)[:, None, ranks]
+    numbers[SLOPE, 3:] = (chosen * W_v).sum(axis=-2)
+    if given.zeeman.size > 1:
+        _perturb(numbers, eigen, (P_v, W_v), field_gauss, ranks)
+    return Movement(numbers)
 
 
-def _perturbed(eigen: Eigen, P: Array, W: Array, ranks: Sequence[int] | slice) -> Array:
-    """Evaluate the three sums of the module's head for the chosen ranks, shape (4, 5, n, k)."""
-    Z, R = eigen.zeeman_in_eigenbasis(), eigen.inverse_gaps()[:, ranks]
-    Z_k, P_k, W_k = Z[:, ranks], P[:, :, ranks], W[:, :, ranks]
-    diagonal = np.arange(eigen.block.size)[ranks]
-    picked = np.arange(diagonal.size)
-    P_kk, W_kk, Z_kk = P_k[:, :, picked, diagonal], W_k[:, :, picked, diagonal], Z_k[:, picked, diagonal]
-    ZR = Z_k * R
-    ZR2 = ZR * R
-    slope = W_kk + 2 * np.sum(ZR * P_k, axis=-1)
-    PR, ZP = P_k * R, ZR @ P
-    quadratic = (
-        2 * np.sum(ZR * W_k, axis=-1)
-        + 2 * np.sum((PR @ Z) * ZR, axis=-1)
-        + np.sum(ZP * ZR, axis=-1)
-        - P_kk * np.sum(ZR * ZR, axis=-1)
-        - 2 * Z_kk * np.sum(ZR2 * P_k, axis=-1)
-    )
-    shift = P_kk.copy()
-    labels = [eigen.twice_F[k] for k in diagonal]
-    shift[:3] -= _zero_field_weights(eigen.block, labels)[:, None, :]
-    return np.stack([P_kk, slope, quadratic * HZ_PER_MHZ, shift])
+def _applied(eigen: Eigen, vectors: Array, field_gauss: Array) -> tuple[Array, Array]:
+    """Apply dH/dp for the five constants (5, n, d, k), and d2H/dBdp for the two g factors (2, n, d, k), to vectors."""
+    W = eigen.given.linear[:, None, :, None] * vectors
+    P = np.empty((len(NAMES), *vectors.shape))
+    P[:3] = eigen.given.steady[:, None] @ vectors
+    P[3:] = field_gauss[:, None, None] * W
+    return P, W
 
 
-def _zero_field_weights(part: Block, labels: Sequence[int]) -> Array:
+def _perturb(
+    numbers: Array, eigen: Eigen, applied: tuple[Array, Array], field_gauss: Array, ranks: Sequence[int] | slice
+) -> None:
+    """Add the sums over other states of the module's head to slope and quadratic coefficient, in place."""
+    turn, Z = eigen.states.swapaxes(-1, -2), eigen.zeeman_in_eigenbasis()
+    R = -eigen.inverse_gaps()[:, :, ranks]  # (n, l, k) with k the chosen rank: 1/(E_k - E_l)
+    ZR = Z[:, :, ranks] * R
+    P_lk, W_lk = turn @ applied[0], turn @ applied[1]
+    numbers[SLOPE] += 2 * (ZR * P_lk).sum(axis=-2)
+    mixed = eigen.states @ ZR
+    Z_kk = Z.diagonal(axis1=1, axis2=2)[:, None, ranks]
+    weight = 2 * R * (Z @ ZR - Z_kk * ZR)
+    quadratic = (weight * P_lk).sum(axis=-2)
+    quadratic += (mixed * _applied(eigen, mixed, field_gauss)[0]).sum(axis=-2)
+    quadratic -= numbers[ENERGY] * (ZR * ZR).sum(axis=-2)
+    quadratic[3:] += 2 * (ZR * W_lk).sum(axis=-2)
+    numbers[QUADRATIC] = quadratic * HZ_PER_MHZ
+
+
+@lru_cache(maxsize=4096)
+def _zero_field_weights(part: Block, labels: tuple[int, ...]) -> Array:
     """Return dE/dA, dE/dB, dE/dC at zero field of each F, shape (3, k)."""
-    return np.array([hyperfine_weights(part.twice_J, part.twice_I, F) for F in labels]).T
+    weights = np.array([hyperfine_weights(part.twice_J, part.twice_I, F) for F in labels]).T
+    weights.setflags(write=False)
+    return weights
 
 
 Terms = dict[Hashable, tuple[Quantity, str, Array]]

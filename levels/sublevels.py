@@ -41,32 +41,43 @@ class Constants:
 
 @dataclass(frozen=True, slots=True, eq=False)
 class Eigen:
-    """One block solved at n fields: energies (n, d), states as columns (n, d, d), and the F of each rank (d,)."""
+    """One block solved at n fields: energies (n, d) and states as columns (n, d, d), ranked by energy."""
 
-    block: Block
-    twice_F: tuple[int, ...]
+    given: "Prepared"
     energy_mhz: Array
     states: Array
-    zeeman_mhz_per_gauss: Array  # diagonal of dH/dB, shape (d,)
+
+    @property
+    def block(self) -> Block:
+        """The block that was solved."""
+        return self.given.block
+
+    @property
+    def twice_F(self) -> tuple[int, ...]:
+        """The zero-field label 2F of each rank."""
+        return self.given.twice_F
 
     def slope_mhz_per_gauss(self) -> Array:
         """Return dE/dB, shape (n, d)."""
-        slope: Array = np.matmul(self.states.swapaxes(-1, -2) ** 2, self.zeeman_mhz_per_gauss)
+        slope: Array = self.given.zeeman @ (self.states * self.states)
         return slope
 
     def zeeman_in_eigenbasis(self) -> Array:
         """Return dH/dB between the eigenstates, shape (n, d, d)."""
-        return self.states.swapaxes(-1, -2) @ (self.zeeman_mhz_per_gauss[:, None] * self.states)
+        return self.states.swapaxes(-1, -2) @ (self.given.zeeman[:, None] * self.states)
 
     def inverse_gaps(self) -> Array:
         """Return 1/(E_k - E_l) off the diagonal and zero on it, shape (n, d, d)."""
         gaps: Array = self.energy_mhz[:, :, None] - self.energy_mhz[:, None, :]
-        np.einsum("nii->ni", gaps)[...] = np.inf
-        return np.reciprocal(gaps)
+        gaps.reshape(gaps.shape[0], -1)[:, :: gaps.shape[-1] + 1] = np.inf
+        inverse: Array = np.reciprocal(gaps)
+        return inverse
 
     def quadratic_mhz_per_gauss2(self) -> Array:
         """Return half of d2E/dB2 by second-order perturbation theory, shape (n, d)."""
-        result: Array = np.einsum("nkl,nkl->nk", self.zeeman_in_eigenbasis() ** 2, self.inverse_gaps())
+        if self.energy_mhz.shape[1] == 1:
+            return np.zeros_like(self.energy_mhz)
+        result: Array = (self.zeeman_in_eigenbasis() ** 2 * self.inverse_gaps()).sum(axis=-1)
         return result
 
 
@@ -96,7 +107,8 @@ class Sublevels:
     @property
     def moment_mu_b(self) -> Array:
         """Magnetic moment along z in Bohr magnetons, -dE/dB, shape (n, s)."""
-        return -self.slope_mhz_per_gauss / MU_B_MHZ_PER_GAUSS
+        moment: Array = -self.slope_mhz_per_gauss / MU_B_MHZ_PER_GAUSS
+        return moment
 
 
 def constants_of(level: Level) -> Constants:
@@ -157,31 +169,58 @@ def zero_field_mhz(constants: Constants, twice_F: int) -> float:
 
 def _closed_form_of_two(diagonal: Array, coupling: float) -> tuple[Array, Array]:
     """Solve [[a, c], [c, b]] at n fields: energies (n, 2) rising, states as columns (n, 2, 2)."""
-    mean, half = diagonal.mean(axis=-1), (diagonal[:, 0] - diagonal[:, 1]) / 2
+    mean, half = (diagonal[:, 0] + diagonal[:, 1]) / 2, (diagonal[:, 0] - diagonal[:, 1]) / 2
     radius = np.hypot(half, coupling)
     angle = np.arctan2(coupling, half) / 2
     cos, sin = np.cos(angle), np.sin(angle)
-    energy = np.stack([mean - radius, mean + radius], axis=-1)
-    states = np.stack([np.stack([-sin, cos], axis=-1), np.stack([cos, sin], axis=-1)], axis=-2)
+    energy, states = np.empty((mean.size, 2)), np.empty((mean.size, 2, 2))
+    energy[:, 0], energy[:, 1] = mean - radius, mean + radius
+    states[:, 0, 0], states[:, 0, 1], states[:, 1, 0], states[:, 1, 1] = -sin, cos, cos, sin
     return energy, states
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Prepared:
+    """What one block of given constants needs at every field, made once: all arrays read-only.
+
+    `still` is H at zero field (d, d), `zeeman` the diagonal of dH/dB (d,); `steady` holds dH/dA, dH/dB_hfs, dH/dC
+    (3, d, d), `linear` the diagonals of d2H/dBdg_J and d2H/dBdg_I (2, d).
+    """
+
+    block: Block
+    twice_F: tuple[int, ...]
+    still: Array
+    zeeman: Array
+    steady: Array
+    linear: Array
+
+
+@lru_cache(maxsize=4096)
+def prepared(constants: Constants, twice_m: int) -> Prepared:
+    """Make the field-independent parts of one m-block."""
+    part = block(constants.twice_J, constants.twice_I, twice_m)
+    steady = np.stack([part.dipole, part.quadrupole, part.octupole])
+    linear = MU_B_MHZ_PER_GAUSS * np.stack([part.J_z, part.I_z])
+    still = np.tensordot((constants.A_mhz, constants.B_mhz, constants.C_mhz), steady, 1)
+    zeeman = constants.g_J * linear[0] + constants.g_I * linear[1]
+    for array in (steady, linear, still, zeeman):
+        array.setflags(write=False)
+    return Prepared(part, ranked_F(constants, twice_m), still, zeeman, steady, linear)
 
 
 def solve_block(constants: Constants, twice_m: int, fields: Array) -> Eigen:
     """Diagonalise one m-block at n fields."""
-    part = block(constants.twice_J, constants.twice_I, twice_m)
-    ranked = ranked_F(constants, twice_m)
-    zeeman = MU_B_MHZ_PER_GAUSS * (constants.g_J * part.J_z + constants.g_I * part.I_z)
-    still = constants.A_mhz * part.dipole + constants.B_mhz * part.quadrupole + constants.C_mhz * part.octupole
-    if part.size == 1:
-        energy = still[0, 0] + fields[:, None] * zeeman
-        return Eigen(part, ranked, energy, np.ones((fields.size, 1, 1)), zeeman)
-    if part.size == 2:
-        energy, states = _closed_form_of_two(np.diag(still) + fields[:, None] * zeeman, float(still[0, 1]))
-        return Eigen(part, ranked, energy, states, zeeman)
-    matrix = np.repeat(still[None], fields.size, axis=0)
-    np.einsum("nii->ni", matrix)[...] += fields[:, None] * zeeman
-    energy, states = np.linalg.eigh(matrix)
-    return Eigen(part, ranked, energy, states, zeeman)
+    given = prepared(constants, twice_m)
+    size = given.zeeman.size
+    diagonal = given.still.diagonal() + fields[:, None] * given.zeeman
+    if size == 1:
+        return Eigen(given, diagonal, np.ones((fields.size, 1, 1)))
+    if size == 2:
+        return Eigen(given, *_closed_form_of_two(diagonal, float(given.still[0, 1])))
+    matrix = np.empty((fields.size, size, size))
+    matrix[:] = given.still
+    matrix.reshape(fields.size, -1)[:, :: size + 1] = diagonal
+    return Eigen(given, *np.linalg.eigh(matrix))
 
 
 def high_field_labels(constants: Constants, twice_m: int) -> tuple[tuple[int, int], ...]:
