@@ -35,6 +35,7 @@ class Level:
     `g_J`, `A`, `B`, `C` follow H/h = A I.J + B (quadrupole) + C (octupole) + (muB/h)(g_J J_z + g_I I_z) B with A, B, C
     in MHz and both g factors in units of the Bohr magneton. `energy` is in cm-1 above the ground level (centroids),
     `lifetime` in s, `width` (Gamma/2pi, full natural width) in MHz. A constant nobody has published is None.
+    `neighbours` are the levels of the same configuration and LS term with J +- 1, as (2J', E(J') - E(J) in MHz).
     """
 
     atom: str
@@ -55,6 +56,7 @@ class Level:
     energy_of: str = ""  # "40" or "natural": the isotope whose energy this is
     lifetime: Quantity | None = None
     width: Quantity | None = None
+    neighbours: tuple[tuple[int, float], ...] = ()
     notes: tuple[str, ...] = ()
 
 

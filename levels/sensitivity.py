@@ -7,11 +7,13 @@ perturbation theory in the eigenbasis gives (R_kl = 1/(E_k - E_l), zero for k = 
     ds/dp   = W_kk + 2 sum_l Z_kl P_lk R_kl                                   s: slope
     dq/dp   = 2 sum_l Z_kl W_lk R_kl + 2 sum_lj P_kl Z_lj Z_jk R_kl R_kj
               + sum_lj Z_kl P_lj Z_jk R_kl R_kj - P_kk sum_l Z_kl^2 R_kl^2
-              - 2 Z_kk sum_l Z_kl P_lk R_kl^2                                 q: quadratic coefficient, half of d2E/dB2
+              - 2 Z_kk sum_l Z_kl P_lk R_kl^2 + 2 sum_l D_kl P_lk R_kl        q: quadratic coefficient, half of d2E/dB2
+
+(D = half of d2H/dB2, the fine-structure term.)
 
 Landau, Lifshitz, Quantum Mechanics (1977), section 38. The shift from zero field moves as E does, less the zero-field
-hyperfine weights. Constants are taken as independent unless they are the same
-published value (g_I of one isotope), which enters once.
+hyperfine weights. Constants are taken as independent unless they are the same published value (g_I of one isotope),
+which enters once.
 """
 
 from collections.abc import Hashable, Mapping, Sequence
@@ -79,7 +81,8 @@ def _perturb(
     mixed = eigen.states @ ZR
     Z_kk = Z.diagonal(axis1=1, axis2=2)[:, None, ranks]
     weight = 2 * R * (Z @ ZR - Z_kk * ZR)
-    quadratic = (weight * P_lk).sum(axis=-2)
+    square = turn @ (eigen.given.square[:, None] * eigen.states[:, :, ranks])
+    quadratic = ((weight + 2 * R * square) * P_lk).sum(axis=-2)
     quadratic += (mixed * _applied(eigen, mixed, field_gauss)[0]).sum(axis=-2)
     quadratic -= numbers[ENERGY] * (ZR * ZR).sum(axis=-2)
     quadratic[3:] += 2 * (ZR * W_lk).sum(axis=-2)

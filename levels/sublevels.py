@@ -18,6 +18,7 @@ from levels.blocks import Block, block, block_ms, hyperfine_shift
 from levels.constants import MU_B_MHZ_PER_GAUSS
 from levels.errors import NotPublished, OutsideValidity, UnknownName
 from levels.fieldgrid import on_grid
+from levels.multiplet import second_order
 from levels.notation import format_half, format_sublevel
 from levels.records import Level
 
@@ -37,13 +38,18 @@ class Constants:
     C_mhz: float = 0.0
     g_J: float = 0.0
     g_I: float = 0.0
+    square_mhz_per_gauss2: tuple[float, ...] = ()  # second-order fine-structure shift of each m_J, see `multiplet`
 
 
 @dataclass(frozen=True, slots=True, eq=False)
 class Eigen:
-    """One block solved at n fields: energies (n, d) and states as columns (n, d, d), ranked by energy."""
+    """One block solved at n fields: energies (n, d) and states as columns (n, d, d), ranked by energy.
+
+    `moving` is the diagonal of dH/dB at each field, shape (n, d).
+    """
 
     given: "Prepared"
+    moving: Array
     energy_mhz: Array
     states: Array
 
@@ -59,12 +65,12 @@ class Eigen:
 
     def slope_mhz_per_gauss(self) -> Array:
         """Return dE/dB, shape (n, d)."""
-        slope: Array = self.given.zeeman @ (self.states * self.states)
+        slope: Array = (self.moving[:, None, :] @ (self.states * self.states))[:, 0, :]
         return slope
 
     def zeeman_in_eigenbasis(self) -> Array:
         """Return dH/dB between the eigenstates, shape (n, d, d)."""
-        return self.states.swapaxes(-1, -2) @ (self.given.zeeman[:, None] * self.states)
+        return self.states.swapaxes(-1, -2) @ (self.moving[:, :, None] * self.states)
 
     def inverse_gaps(self) -> Array:
         """Return 1/(E_k - E_l) off the diagonal and zero on it, shape (n, d, d)."""
@@ -75,9 +81,9 @@ class Eigen:
 
     def quadratic_mhz_per_gauss2(self) -> Array:
         """Return half of d2E/dB2 by second-order perturbation theory, shape (n, d)."""
-        if self.energy_mhz.shape[1] == 1:
-            return np.zeros_like(self.energy_mhz)
-        result: Array = (self.zeeman_in_eigenbasis() ** 2 * self.inverse_gaps()).sum(axis=-1)
+        result: Array = self.given.square @ (self.states * self.states)
+        if self.energy_mhz.shape[1] > 1:
+            result += (self.zeeman_in_eigenbasis() ** 2 * self.inverse_gaps()).sum(axis=-1)
         return result
 
 
@@ -127,7 +133,8 @@ def constants_of(level: Level) -> Constants:
             hint = "a lab overlay can supply it"
             raise NotPublished(name, f"{level.atom} {level.name}", hint)
     A, B, C, g_J, g_I = (0.0 if q is None else q.value for q in (level.A, level.B, level.C, level.g_J, level.g_I))
-    return Constants(level.twice_J, level.twice_I, A, B, C, g_J, g_I)
+    square = second_order(level.twice_J, level.term, level.neighbours)
+    return Constants(level.twice_J, level.twice_I, A, B, C, g_J, g_I, square)
 
 
 def cautions(level: Level) -> tuple[str, ...]:
@@ -183,7 +190,8 @@ def _closed_form_of_two(diagonal: Array, coupling: float) -> tuple[Array, Array]
 class Prepared:
     """What one block of given constants needs at every field, made once: all arrays read-only.
 
-    `still` is H at zero field (d, d), `zeeman` the diagonal of dH/dB (d,); `steady` holds dH/dA, dH/dB_hfs, dH/dC
+    `still` is H at zero field (d, d), `zeeman` the diagonal of dH/dB there (d,), `square`
+    that of half of d2H/dB2; `steady` holds dH/dA, dH/dB_hfs, dH/dC
     (3, d, d), `linear` the diagonals of d2H/dBdg_J and d2H/dBdg_I (2, d).
     """
 
@@ -191,6 +199,7 @@ class Prepared:
     twice_F: tuple[int, ...]
     still: Array
     zeeman: Array
+    square: Array
     steady: Array
     linear: Array
 
@@ -203,24 +212,30 @@ def prepared(constants: Constants, twice_m: int) -> Prepared:
     linear = MU_B_MHZ_PER_GAUSS * np.stack([part.J_z, part.I_z])
     still = np.tensordot((constants.A_mhz, constants.B_mhz, constants.C_mhz), steady, 1)
     zeeman = constants.g_J * linear[0] + constants.g_I * linear[1]
-    for array in (steady, linear, still, zeeman):
+    per_mJ = dict(
+        zip(range(-constants.twice_J, constants.twice_J + 1, 2), constants.square_mhz_per_gauss2, strict=False)
+    )
+    square = np.array([per_mJ.get(mJ, 0.0) for mJ in part.twice_mJ])
+    for array in (steady, linear, still, zeeman, square):
         array.setflags(write=False)
-    return Prepared(part, ranked_F(constants, twice_m), still, zeeman, steady, linear)
+    return Prepared(part, ranked_F(constants, twice_m), still, zeeman, square, steady, linear)
 
 
 def solve_block(constants: Constants, twice_m: int, fields: Array) -> Eigen:
     """Diagonalise one m-block at n fields."""
     given = prepared(constants, twice_m)
-    size = given.zeeman.size
-    diagonal = given.still.diagonal() + fields[:, None] * given.zeeman
+    size, column = given.zeeman.size, fields[:, None]
+    half_moved = column * given.square
+    moving = given.zeeman + 2 * half_moved
+    diagonal = given.still.diagonal() + column * (given.zeeman + half_moved)
     if size == 1:
-        return Eigen(given, diagonal, np.ones((fields.size, 1, 1)))
+        return Eigen(given, moving, diagonal, np.ones((fields.size, 1, 1)))
     if size == 2:
-        return Eigen(given, *_closed_form_of_two(diagonal, float(given.still[0, 1])))
+        return Eigen(given, moving, *_closed_form_of_two(diagonal, float(given.still[0, 1])))
     matrix = np.empty((fields.size, size, size))
     matrix[:] = given.still
     matrix.reshape(fields.size, -1)[:, :: size + 1] = diagonal
-    return Eigen(given, *np.linalg.eigh(matrix))
+    return Eigen(given, moving, *np.linalg.eigh(matrix))
 
 
 def high_field_labels(constants: Constants, twice_m: int) -> tuple[tuple[int, int], ...]:
@@ -270,8 +285,9 @@ def sublevels(level: Level, field_gauss: ArrayLike, *, quadratic: bool = True) -
 
     `field_gauss` is a number or an array of n fields; long grids are evaluated through `fieldgrid`, to rounding error.
     Without `quadratic` the quadratic coefficients are left out (shape (n, 0)), which saves time on a long grid. High-
-    field labels are those of a positive field unless every field is negative. Neglected: the mixing with other levels
-    of the multiplet and the diamagnetic shift.
+    field labels are those of a positive field unless every field is negative. The mixing with the level's fine-
+    structure neighbours is kept to second order (`multiplet`). Neglected: mixing by the hyperfine interaction beyond
+    what the published constants absorb, and the diamagnetic shift.
     """
     constants, fields = constants_of(level), as_fields(field_gauss)
     labels = labels_of(constants)
