@@ -15,7 +15,7 @@ from levels.blocks import hyperfine_weights
 from levels.constants import EA0, EPS0, G_S, HBAR, M_E, M_E_OVER_M_P, C, E
 from levels.errors import OutsideValidity
 from levels.notation import parse_level, term_quantum_numbers
-from levels.quantity import Quantity, combine, derived, format_number, in_unit
+from levels.quantity import Quantity, combine, derived, format_number, in_unit, significant_digits
 
 _CORE = re.compile(r"\(([0-9]{1,2})([A-Z])([0-9/]+)\)")
 _ORBITALS = "spdfghik"
@@ -49,7 +49,7 @@ def _lande(name: str, term: str, coupling: str, twice_J: int) -> tuple[float, st
         core_share, L_share = hyperfine_shares(twice_K, cores[0][0], outer_L)
         K_share, S_share = hyperfine_shares(twice_J, twice_K, twice_S)
         g_K = cores[0][1] * float(core_share) + float(L_share)
-        return float(g_K * float(K_share) + G_S * float(S_share)), "Lande factor in J1-L2 coupling"
+        return g_K * float(K_share) + float(G_S) * float(S_share), "Lande factor in J1-L2 coupling"
     if (cores[0][0], cores[1][0]) != (numbers["j1"], numbers["j2"]):
         raise OutsideValidity("term", term, "the two J of the terms in parentheses")
     first, second = hyperfine_shares(twice_J, numbers["j1"], numbers["j2"])
@@ -129,10 +129,12 @@ def _interval_equations(
     names: Sequence[str],
 ) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
     columns = {"A": 0, "B": 1, "C": 2}
-    weights = np.array([
-        np.subtract(hyperfine_weights(twice_J, twice_I, second), hyperfine_weights(twice_J, twice_I, first))
-        for first, second, _ in intervals
-    ])
+    weights = np.array(
+        [
+            np.subtract(hyperfine_weights(twice_J, twice_I, second), hyperfine_weights(twice_J, twice_I, first))
+            for first, second, _ in intervals
+        ]
+    )
     measured = [in_unit(quantity, "MHz") for _, _, quantity in intervals]
     known = {name: in_unit(quantity, "MHz") for name, quantity in given.items()}
     target = np.array([item.value for item in measured])
@@ -156,11 +158,16 @@ def _divided(measured: Quantity, divisor: float) -> Quantity:
 
 def _product(formula: str, unit: str, value: float, *factors: Quantity, powers: Sequence[float] = ()) -> Quantity:
     exponents = powers or [1.0] * len(factors)
-    relative = combine(*(
-        None if item.uncertainty is None or item.value == 0 else power * item.uncertainty / item.value
-        for item, power in zip(factors, exponents, strict=True)
-    ))
-    return derived(value, None if relative is None else abs(value * relative), unit, formula, inputs=factors)
+    relative = combine(
+        *(
+            None if item.uncertainty is None or item.value == 0 else power * item.uncertainty / item.value
+            for item, power in zip(factors, exponents, strict=True)
+        )
+    )
+    if relative is not None:
+        return derived(value, abs(value * relative), unit, formula, inputs=factors)
+    digits = min(significant_digits(item.text) for item in factors if item.uncertainty is None)
+    return replace(derived(value, None, unit, formula, inputs=factors), text=f"{value:.{max(digits, 2)}g} {unit}")
 
 
 def rate_of_branching(branching: Quantity, lifetime: Quantity) -> Quantity:

@@ -109,6 +109,16 @@ def resolution(text: str) -> float:
     return float(Fraction(10) ** (int(match["exponent"] or 0) - decimals))
 
 
+def significant_digits(text: str) -> int:
+    """How many significant digits a published number prints.
+
+    >>> significant_digits("0.00420 MHz")
+    3
+    """
+    match = _NUMBER.match(text)
+    return len(match["digits"].replace(".", "").lstrip("+-0")) if match else 0
+
+
 def read(
     text: str,
     *,
@@ -244,51 +254,55 @@ def _shown(text: str) -> str:
 # Spectroscopic conversions. They are exact (c is), so the published evidence stays.
 
 
-def frequency_of_wavenumber(energy: Quantity) -> Quantity:
-    """The frequency in MHz of a wavenumber, or of a quantity that already is a frequency."""
-    if UNITS[energy.unit].dimension == "frequency":
-        return in_unit(energy, "MHz")
-    wavenumber = in_unit(energy, "cm-1")
-    return _scaled(wavenumber, MHZ_PER_WAVENUMBER, "MHz")
+def frequency_of(quantity: Quantity) -> Quantity:
+    """The frequency in MHz of a frequency, a wavenumber or a vacuum wavelength."""
+    dimension = UNITS[quantity.unit].dimension
+    alone = replace(quantity, alternatives=())
+    if dimension == "length":
+        result = _reciprocal(in_unit(alone, "nm"), MHZ_NM, "MHz")
+    elif dimension == "wavenumber":
+        result = _scaled(in_unit(alone, "cm-1"), MHZ_PER_WAVENUMBER, "MHz")
+    else:
+        result = in_unit(alone, "MHz")
+    return replace(result, alternatives=tuple(map(frequency_of, quantity.alternatives)))
 
 
-def wavenumber_of_frequency(frequency: Quantity) -> Quantity:
-    """The wavenumber in cm-1 of a frequency."""
-    return _scaled(in_unit(frequency, "MHz"), 1.0 / MHZ_PER_WAVENUMBER, "cm-1")
+def wavenumber_of(quantity: Quantity) -> Quantity:
+    """The wavenumber in cm-1 of a wavenumber, a frequency or a vacuum wavelength."""
+    alone = replace(quantity, alternatives=())
+    if UNITS[quantity.unit].dimension == "wavenumber":
+        result = in_unit(alone, "cm-1")
+    else:
+        result = _scaled(frequency_of(alone), 1.0 / MHZ_PER_WAVENUMBER, "cm-1")
+    return replace(result, alternatives=tuple(map(wavenumber_of, quantity.alternatives)))
 
 
-def wavelength_of_frequency(frequency: Quantity) -> Quantity:
-    """The vacuum wavelength in nm of a frequency."""
-    return _reciprocal(in_unit(frequency, "MHz"), MHZ_NM, "nm")
-
-
-def frequency_of_wavelength(wavelength: Quantity) -> Quantity:
-    """The frequency in MHz of a vacuum wavelength."""
-    return _reciprocal(in_unit(wavelength, "nm"), MHZ_NM, "MHz")
+def wavelength_of(quantity: Quantity, photons: int = 1) -> Quantity:
+    """The vacuum wavelength in nm of each of the equal photons whose frequencies or wavenumbers add up to a quantity."""
+    result = _reciprocal(frequency_of(replace(quantity, alternatives=())), MHZ_NM * photons, "nm")
+    return replace(result, alternatives=tuple(wavelength_of(other, photons) for other in quantity.alternatives))
 
 
 def width_of_lifetime(lifetime: Quantity) -> Quantity:
     """The full natural width Gamma/2pi in MHz of a lifetime."""
-    return _reciprocal(in_unit(lifetime, "s"), 1e-6 / (2 * math.pi), "MHz")
+    result = _reciprocal(in_unit(lifetime, "s"), 1e-6 / (2 * math.pi), "MHz")
+    return replace(result, alternatives=tuple(map(width_of_lifetime, lifetime.alternatives)))
 
 
 def lifetime_of_width(width: Quantity) -> Quantity:
     """The lifetime in s of a full natural width Gamma/2pi."""
-    return _reciprocal(in_unit(width, "MHz"), 1e-6 / (2 * math.pi), "s")
+    result = _reciprocal(in_unit(width, "MHz"), 1e-6 / (2 * math.pi), "s")
+    return replace(result, alternatives=tuple(map(lifetime_of_width, width.alternatives)))
 
 
 def _scaled(quantity: Quantity, scale: float, unit: str) -> Quantity:
-    spread = quantity.uncertainty
-    others = tuple(_scaled(in_unit(other, quantity.unit), scale, unit) for other in quantity.alternatives)
-    spread = None if spread is None else spread * abs(scale)
-    return replace(quantity, value=quantity.value * scale, uncertainty=spread, unit=unit, alternatives=others)
+    spread = None if quantity.uncertainty is None else quantity.uncertainty * abs(scale)
+    return replace(quantity, value=quantity.value * scale, uncertainty=spread, unit=unit)
 
 
 def _reciprocal(quantity: Quantity, numerator: float, unit: str) -> Quantity:
     if quantity.value == 0:
         raise OutsideValidity("value", quantity.text, "different from zero")
     value = numerator / quantity.value
-    spread = quantity.uncertainty
-    spread = None if spread is None else abs(spread / quantity.value * value)
-    others = tuple(_reciprocal(in_unit(other, quantity.unit), numerator, unit) for other in quantity.alternatives)
-    return replace(quantity, value=value, uncertainty=spread, unit=unit, alternatives=others)
+    spread = None if quantity.uncertainty is None else abs(quantity.uncertainty / quantity.value * value)
+    return replace(quantity, value=value, uncertainty=spread, unit=unit)
