@@ -1,0 +1,1 @@
+"""The test suite; a package so that its helpers have one unambiguous name."""

@@ -1,0 +1,191 @@
+"""A plain second construction of the Hamiltonian: spin matrices and Kronecker products in the full dimension.
+
+It shares no formula with `levels.blocks`: the quadrupole and octupole are contracted from spherical tensors that are
+lowered from j_+^k and scaled to the stretched state. Sizes are kept apart in m by adding a multiple of F_z, which
+commutes with everything, so that the order of a plain `eigh` is by m and then by energy.
+"""
+
+from dataclasses import dataclass
+from functools import lru_cache
+
+import mpmath
+import numpy as np
+from numpy.typing import NDArray
+from pywigxjpf import pywigxjpf
+
+from levels.constants import MU_B_MHZ_PER_GAUSS
+from levels.records import Level
+
+Array = NDArray[np.float64]
+pywigxjpf.wig_table_init(2 * 60, 6)
+pywigxjpf.wig_temp_init(2 * 60)
+
+
+def wig3jj(*places: int) -> float:
+    """The 3j symbol of doubled arguments by an independent library."""
+    return float(pywigxjpf.wig3jj(*places))
+
+
+def wig6jj(*places: int) -> float:
+    """The 6j symbol of doubled arguments by an independent library."""
+    return float(pywigxjpf.wig6jj(*places))
+
+
+@lru_cache(maxsize=256)
+def spin(twice_j: int) -> tuple[Array, Array, Array]:
+    """j_z, j_+ and j_- with the highest m first."""
+    m = np.arange(twice_j, -twice_j - 1, -2) / 2
+    j = twice_j / 2
+    raising = np.diag(np.sqrt(j * (j + 1) - m[1:] * (m[1:] + 1)), 1)
+    return np.diag(m), raising, raising.T.copy()
+
+
+def tensors(twice_j: int, rank: int) -> dict[int, Array]:
+    """The components q = k..-k of the irreducible tensor of one spin that starts from j_+^k."""
+    _, raising, lowering = spin(twice_j)
+    current = np.linalg.matrix_power(raising, rank)
+    components = {rank: current, -rank: (-1) ** rank * current.T}
+    for q in range(rank, 0, -1):
+        current = (lowering @ current - current @ lowering) / np.sqrt(rank * (rank + 1) - q * (q - 1))
+        components[q - 1] = current
+        components[1 - q] = (-1) ** (q - 1) * current.T
+    return components
+
+
+@lru_cache(maxsize=256)
+def interaction(twice_J: int, twice_I: int, rank: int, stretched: float) -> Array:
+    """The scalar product of the rank-k tensors of J and I, scaled to `stretched` in the stretched state."""
+    size = (twice_J + 1) * (twice_I + 1)
+    if twice_J < rank or twice_I < rank:
+        return np.zeros((size, size))
+    electronic, nuclear = tensors(twice_J, rank), tensors(twice_I, rank)
+    product = sum((-1) ** q * np.kron(electronic[q], nuclear[-q]) for q in range(-rank, rank + 1))
+    result: Array = product * (stretched / product[0, 0])
+    return result
+
+
+@dataclass(frozen=True)
+class Operators:
+    """The full-dimension operators of a level, product states with the highest m_J and then m_I first."""
+
+    dipole: Array
+    quadrupole: Array
+    octupole: Array
+    J_z: Array
+    I_z: Array
+
+
+@lru_cache(maxsize=256)
+def operators(twice_J: int, twice_I: int) -> Operators:
+    J, I = twice_J / 2, twice_I / 2
+    return Operators(
+        interaction(twice_J, twice_I, 1, I * J),
+        interaction(twice_J, twice_I, 2, 0.25),
+        interaction(twice_J, twice_I, 3, 1.0),
+        np.kron(spin(twice_J)[0], np.eye(twice_I + 1)),
+        np.kron(np.eye(twice_J + 1), spin(twice_I)[0]),
+    )
+
+
+def number(level: Level, name: str) -> float:
+    constant = getattr(level, name)
+    return 0.0 if constant is None else float(constant.value)
+
+
+def still(level: Level) -> Array:
+    """The Hamiltonian at zero field in MHz."""
+    ops = operators(level.twice_J, level.twice_I)
+    parts = zip("ABC", (ops.dipole, ops.quadrupole, ops.octupole), strict=True)
+    return sum((number(level, name) * part for name, part in parts), np.zeros_like(ops.dipole))
+
+
+def zeeman(level: Level) -> Array:
+    """dH/dB in MHz/G."""
+    ops = operators(level.twice_J, level.twice_I)
+    return MU_B_MHZ_PER_GAUSS * (number(level, "g_J") * ops.J_z + number(level, "g_I") * ops.I_z)
+
+
+def largest_term(level: Level, field_gauss: float) -> float:
+    """The size in MHz of the largest term of the Hamiltonian, which rounding errors scale with."""
+    ops = operators(level.twice_J, level.twice_I)
+    parts = zip("ABC", (ops.dipole, ops.quadrupole, ops.octupole), strict=True)
+    terms = [abs(number(level, name)) * np.abs(part).max() for name, part in parts]
+    return float(max(*terms, abs(field_gauss) * np.abs(zeeman(level)).max(), 1e-9))
+
+
+@dataclass(frozen=True)
+class Solved:
+    """Every sublevel at one field, by m and then by energy; `gap_mhz` is the smallest one inside an m."""
+
+    twice_m: NDArray[np.int64]
+    energy_mhz: Array
+    slope_mhz_per_gauss: Array
+    states: Array
+    gap_mhz: float
+
+
+def solve(level: Level, field_gauss: float) -> Solved:
+    """Diagonalise a level at one field in one piece."""
+    ops = operators(level.twice_J, level.twice_I)
+    hamiltonian = still(level) + field_gauss * zeeman(level)
+    total = np.diag(ops.J_z + ops.I_z)
+    apart = 4 * max(float(np.abs(np.linalg.eigvalsh(hamiltonian)).max()), 1e-9)
+    energy, states = np.linalg.eigh(hamiltonian + apart * np.diag(total))
+    m = np.einsum("ik,i,ik->k", states, total, states)
+    slope = np.einsum("ik,ij,jk->k", states, zeeman(level), states)
+    twice_m = np.rint(2 * m).astype(np.int64)
+    energy = energy - apart * twice_m / 2
+    steps = np.diff(energy)[np.diff(twice_m) == 0]
+    return Solved(twice_m, energy, slope, states, float(steps.min()) if steps.size else np.inf)
+
+
+def zero_field_labels(level: Level) -> NDArray[np.int64]:
+    """2F of every sublevel in the order of `solve`, from the expectation of F^2 at zero field."""
+    ops = operators(level.twice_J, level.twice_I)
+    J, I = level.twice_J / 2, level.twice_I / 2
+    states = solve(level, 0.0).states
+    square = J * (J + 1) + I * (I + 1) + 2 * np.einsum("ik,ij,jk->k", states, ops.dipole, states)
+    return np.rint(np.sqrt(4 * square + 1) - 1).astype(np.int64)
+
+
+def multipole(twice_J: int, twice_J_up: int, twice_I: int, rank: int, q: int) -> Array:
+    """The q component of the multipole operator from lower to upper level, (upper, lower), each upper's decays 1."""
+    electronic = np.zeros((twice_J_up + 1, twice_J + 1))
+    for row, m_up in enumerate(range(twice_J_up, -twice_J_up - 1, -2)):
+        for column, m in enumerate(range(twice_J, -twice_J - 1, -2)):
+            if m_up - m == 2 * q:
+                symbol = wig3jj(twice_J_up, 2 * rank, twice_J, -m_up, 2 * q, m)
+                electronic[row, column] = (-1) ** ((twice_J_up - m_up) // 2) * np.sqrt(twice_J_up + 1) * symbol
+    return np.kron(electronic, np.eye(twice_I + 1))
+
+
+def precise(level: Level, twice_m: int, field_gauss: float, moved: dict[str, "mpmath.mpf"] | None = None) -> list[
+    tuple["mpmath.mpf", "mpmath.mpf", "mpmath.mpf"]
+]:  # fmt: skip
+    """Energy, slope and quadratic coefficient (MHz, MHz/G, MHz/G2) of one m by rank, to 40 digits.
+
+    The submatrix of one m is cut out of the full matrices; its small numbers are exact to double rounding, which moves
+    every answer by about 1e-16. `moved` adds to constants by name.
+    """
+    moved = moved or {}
+    ops = operators(level.twice_J, level.twice_I)
+    rows = np.nonzero(np.rint(2 * np.diag(ops.J_z + ops.I_z)) == twice_m)[0]
+    with mpmath.workdps(40):
+        A, B, C, g_J, g_I = (
+            mpmath.mpf(number(level, key)) + moved.get(key, 0) for key in ("A", "B", "C", "g_J", "g_I")
+        )
+        cut = [mpmath.matrix(part[np.ix_(rows, rows)].tolist()) for part in vars(ops).values()]
+        tilt = mpmath.mpf(MU_B_MHZ_PER_GAUSS) * (g_J * cut[3] + g_I * cut[4])
+        hamiltonian = A * cut[0] + B * cut[1] + C * cut[2] + mpmath.mpf(field_gauss) * tilt
+        hamiltonian = (hamiltonian + hamiltonian.T) / 2
+        energy, states = mpmath.eigsy(hamiltonian)
+        Z = states.T * tilt * states
+        order = sorted(range(len(rows)), key=lambda k: energy[k])
+        return [
+            (
+                energy[k],
+                Z[k, k],
+                mpmath.fsum(Z[k, other] ** 2 / (energy[k] - energy[other]) for other in order if other != k),
+            )
+            for k in order
+        ]
