@@ -113,6 +113,7 @@ def _decay(table: LevelTable) -> tuple[Quantity | None, Quantity | None]:
 def line_record(name: str, table: LineTable, lower: Level, upper: Level, centroid: Centroid | None) -> Line:
     """One line of one isotope, with the rate, branching and dipole element that follow from what is published."""
     frequency = centroid.quantity if centroid else None
+    notes = (table.note, table.induced, _PHOTONS[table.photons], centroid.note if centroid else "")
     rate, branching, dipole = _strengths(table, lower, upper, frequency)
     return Line(
         atom=upper.atom,
@@ -131,7 +132,7 @@ def line_record(name: str, table: LineTable, lower: Level, upper: Level, centroi
         einstein_A=rate,
         branching=branching,
         reduced_dipole=dipole,
-        notes=tuple(filter(None, (table.note, table.induced, _PHOTONS[table.photons], centroid.note if centroid else ""))),
+        notes=tuple(filter(None, notes)),
     )
 
 

@@ -278,7 +278,7 @@ def wavenumber_of(quantity: Quantity) -> Quantity:
 
 
 def wavelength_of(quantity: Quantity, photons: int = 1) -> Quantity:
-    """The vacuum wavelength in nm of each of the equal photons whose frequencies or wavenumbers add up to a quantity."""
+    """The vacuum wavelength in nm of each of the equal photons that add up to a frequency or wavenumber."""
     result = _reciprocal(frequency_of(replace(quantity, alternatives=())), MHZ_NM * photons, "nm")
     return replace(result, alternatives=tuple(wavelength_of(other, photons) for other in quantity.alternatives))
 
