@@ -6,6 +6,7 @@ width, rate and branching fraction are filled in from each other where one is mi
 
 from dataclasses import replace
 
+from levels.constants import MHZ_PER_WAVENUMBER
 from levels.derive import (
     branching_of_rate,
     constants_of_intervals,
@@ -79,7 +80,7 @@ def level_record(data: DataFile, name: str, isotope: Isotope) -> Level:
     constants = hyperfine_constants(hyperfine, twice_J, isotope.twice_I)
     tabulated = wavenumber_of(table.energy.quantity()) if table.energy else None
     energy = _GROUND_ENERGY if name == data.element.ground else tabulated
-    lifetime, width = _decay(table)
+    lifetime, width = _decay(table, hyperfine)
     return Level(
         atom=isotope.name,
         name=name,
@@ -103,8 +104,9 @@ def level_record(data: DataFile, name: str, isotope: Isotope) -> Level:
     )
 
 
-def _decay(table: LevelTable) -> tuple[Quantity | None, Quantity | None]:
-    lifetime, width = _read(table.lifetime, "s"), _read(table.width, "MHz")
+def _decay(table: LevelTable, hyperfine: Hyperfine) -> tuple[Quantity | None, Quantity | None]:
+    lifetime = _read(hyperfine.lifetime or table.lifetime, "s")
+    width = None if hyperfine.lifetime else _read(table.width, "MHz")
     return lifetime or (lifetime_of_width(width) if width else None), width or (
         width_of_lifetime(lifetime) if lifetime else None
     )
@@ -187,6 +189,26 @@ def with_energies_of_lines(data: DataFile, levels: dict[str, Level], edges: dict
     return filled
 
 
+def with_neighbours(levels: dict[str, Level]) -> dict[str, Level]:
+    """Levels told of their fine-structure neighbours: same configuration and LS term, J +- 1, energy known."""
+    filled = {}
+    for name, level in levels.items():
+        near = [other for other in levels.values() if _are_neighbours(level, other)]
+        gaps = tuple((other.twice_J, _energy_mhz(other) - _energy_mhz(level)) for other in near)
+        filled[name] = replace(level, neighbours=gaps)
+    return filled
+
+
+def _are_neighbours(level: Level, other: Level) -> bool:
+    same_term = (level.configuration, level.term, level.parity) == (other.configuration, other.term, other.parity)
+    known = level.energy is not None and other.energy is not None
+    return same_term and level.coupling == other.coupling == "LS" and known and abs(level.twice_J - other.twice_J) == 2
+
+
+def _energy_mhz(level: Level) -> float:
+    return level.energy.value * MHZ_PER_WAVENUMBER if level.energy else 0.0
+
+
 def assemble(data: DataFile) -> dict[int, Atom]:
     """Every isotope of a data file with its levels and lines."""
     isotopes = {mass_number: isotope_record(data, mass_number) for mass_number in data.isotopes}
@@ -200,7 +222,7 @@ def assemble(data: DataFile) -> dict[int, Atom]:
     atoms = {}
     for mass_number, isotope in isotopes.items():
         edges = {str(A): edges_of(data, own, A) for A in (mass_number, data.element.reference_isotope)}
-        found = with_energies_of_lines(data, levels[mass_number], edges)
+        found = with_neighbours(with_energies_of_lines(data, levels[mass_number], edges))
         lines = tuple(
             line_record(name, line, found[line.lower], found[line.upper], centroids[mass_number].get(name))
             for name, line in data.lines.items()
