@@ -7,7 +7,7 @@ from hypothesis import HealthCheck, settings
 
 settings.register_profile(
     "steady",
-    max_examples=25,
+    max_examples=60,
     deadline=None,
     derandomize=True,
     database=None,

@@ -7,6 +7,7 @@ commutes with everything, so that the order of a plain `eigh` is by m and then b
 
 from dataclasses import dataclass
 from functools import lru_cache
+from typing import Any
 
 import mpmath
 import numpy as np
@@ -159,33 +160,48 @@ def multipole(twice_J: int, twice_J_up: int, twice_I: int, rank: int, q: int) ->
     return np.kron(electronic, np.eye(twice_I + 1))
 
 
-def precise(level: Level, twice_m: int, field_gauss: float, moved: dict[str, "mpmath.mpf"] | None = None) -> list[
-    tuple["mpmath.mpf", "mpmath.mpf", "mpmath.mpf"]
-]:  # fmt: skip
-    """Energy, slope and quadratic coefficient (MHz, MHz/G, MHz/G2) of one m by rank, to 40 digits.
+Precise = list[tuple[Any, Any, Any]]
 
-    The submatrix of one m is cut out of the full matrices; its small numbers are exact to double rounding, which moves
-    every answer by about 1e-16. `moved` adds to constants by name.
-    """
-    moved = moved or {}
+
+def _cut(level: Level, twice_m: int, moved: dict[str, Any]) -> tuple[Any, Any]:
+    """The zero-field and the Zeeman matrix of one m, cut out of the full matrices, in mpmath."""
     ops = operators(level.twice_J, level.twice_I)
     rows = np.nonzero(np.rint(2 * np.diag(ops.J_z + ops.I_z)) == twice_m)[0]
+    constants = [mpmath.mpf(number(level, key)) + moved.get(key, 0) for key in ("A", "B", "C", "g_J", "g_I")]
+    parts = [mpmath.matrix(part[np.ix_(rows, rows)].tolist()) for part in vars(ops).values()]
+    parts = [(part + part.T) / 2 for part in parts]
+    tilt = mpmath.mpf(MU_B_MHZ_PER_GAUSS) * (constants[3] * parts[3] + constants[4] * parts[4])
+    return constants[0] * parts[0] + constants[1] * parts[1] + constants[2] * parts[2], tilt
+
+
+def differences(level: Level, twice_m: int, field_gauss: float, step_gauss: float) -> tuple[list[float], list[float]]:
+    """First and half the second derivative of the energies of one m by rank, by central differences at 40 digits.
+
+    The numbers in the full matrices are exact to double rounding, which moves every answer by some 1e-16.
+    """
     with mpmath.workdps(40):
-        A, B, C, g_J, g_I = (
-            mpmath.mpf(number(level, key)) + moved.get(key, 0) for key in ("A", "B", "C", "g_J", "g_I")
+        still_, tilt = _cut(level, twice_m, {})
+        step = mpmath.mpf(step_gauss)
+        low, at, high = (
+            sorted(mpmath.eigsy(still_ + (mpmath.mpf(field_gauss) + k * step) * tilt, eigvals_only=True))
+            for k in (-1, 0, 1)
         )
-        cut = [mpmath.matrix(part[np.ix_(rows, rows)].tolist()) for part in vars(ops).values()]
-        tilt = mpmath.mpf(MU_B_MHZ_PER_GAUSS) * (g_J * cut[3] + g_I * cut[4])
-        hamiltonian = A * cut[0] + B * cut[1] + C * cut[2] + mpmath.mpf(field_gauss) * tilt
-        hamiltonian = (hamiltonian + hamiltonian.T) / 2
-        energy, states = mpmath.eigsy(hamiltonian)
+        slope = [float((c - a) / (2 * step)) for a, c in zip(low, high, strict=True)]
+        half = [float((a - 2 * b + c) / (2 * step**2)) for a, b, c in zip(low, at, high, strict=True)]
+        return slope, half
+
+
+def precise(level: Level, twice_m: int, field_gauss: float, moved: dict[str, Any] | None = None) -> Precise:
+    """Energy, slope and quadratic coefficient (MHz, MHz/G, MHz/G2) of one m by rank, to 40 digits.
+
+    `moved` adds to constants by name, in MHz or Bohr magnetons.
+    """
+    with mpmath.workdps(40):
+        hamiltonian, tilt = _cut(level, twice_m, moved or {})
+        energy, states = mpmath.eigsy(hamiltonian + mpmath.mpf(field_gauss) * tilt)
         Z = states.T * tilt * states
-        order = sorted(range(len(rows)), key=lambda k: energy[k])
+        order = sorted(range(len(energy)), key=lambda k: energy[k])
         return [
-            (
-                energy[k],
-                Z[k, k],
-                mpmath.fsum(Z[k, other] ** 2 / (energy[k] - energy[other]) for other in order if other != k),
-            )
+            (energy[k], Z[k, k], mpmath.fsum(Z[k, j] ** 2 / (energy[k] - energy[j]) for j in order if j != k))
             for k in order
         ]
