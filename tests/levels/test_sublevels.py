@@ -157,7 +157,7 @@ def test_breit_rabi(of: Level, field: float) -> None:
     rate = abs(of.g_J.value - of.g_I.value) * MU_B_MHZ_PER_GAUSS  # type: ignore[union-attr]
     scale = full_dimension.largest_term(of, field)
     for k, (F, m) in enumerate(zip(solved.twice_F, solved.twice_m, strict=True)):
-        energy, slope, quadratic = breit_rabi(of, bool(F == of.twice_I + 1), m / 2, field)
+        energy, slope, quadratic = breit_rabi(of, bool(of.twice_I + 1 == F), m / 2, field)
         assert solved.energy_mhz[0, k] == pytest.approx(energy, abs=1e-12 * scale)
         assert solved.slope_mhz_per_gauss[0, k] == pytest.approx(slope, abs=1e-11 * rate)
         assert solved.quadratic_hz_per_gauss2[0, k] == pytest.approx(
@@ -168,7 +168,7 @@ def test_breit_rabi(of: Level, field: float) -> None:
 @settings(max_examples=8)
 @given(levels(twice_J=st.integers(2, 7), twice_I=st.integers(1, 5)), signed(1.0, 3e3), st.data())
 def test_slopes_and_quadratics_against_forty_digits(of: Level, field: float, data: st.DataObject) -> None:
-    """Slope and quadratic coefficient are the first and half the second derivative of the energy, by 40-digit differences.
+    """Slope and quadratic coefficient are the first and half the second derivative, by differences at 40 digits.
 
     Central differences with a step of 1e-9 G at 40 digits are exact to 1e-16; what is compared is our rounding, which
     grows with (largest term / gap).
