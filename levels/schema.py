@@ -203,6 +203,7 @@ class Hyperfine(Table):
     g_I: Value | None = None
     g_J: Value | None = None
     intervals: tuple[Interval, ...] = ()
+    lifetime: Time | None = None  # of this isotope alone: hyperfine-induced decay, as of 87Sr 3P0
     note: str = ""
 
 
