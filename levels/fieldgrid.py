@@ -23,10 +23,14 @@ WORTH_IT = 3 * POINTS  # grid points in an interval below which the direct way i
 
 @lru_cache(maxsize=1)
 def _chebyshev() -> tuple[Array, Array]:
-    """Return the Chebyshev points of the first kind and the matrix from values there to coefficients."""
-    angles = np.pi * (np.arange(POINTS) + 0.5) / POINTS
-    matrix = 2.0 / POINTS * np.cos(np.outer(np.arange(POINTS), angles))
-    matrix[0] /= 2
+    """Return the Chebyshev points with both ends and the matrix from values there to coefficients.
+
+    With both ends among the points no avoided crossing, however narrow, hides between the last point and the end.
+    """
+    angles = np.pi * np.arange(POINTS) / (POINTS - 1)
+    matrix = 2.0 / (POINTS - 1) * np.cos(np.outer(np.arange(POINTS), angles))
+    matrix[[0, -1]] /= 2
+    matrix[:, [0, -1]] /= 2
     return np.cos(angles), matrix
 
 
