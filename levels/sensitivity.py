@@ -31,6 +31,7 @@ from levels.sublevels import HZ_PER_MHZ, Eigen
 Array = NDArray[np.float64]
 NAMES = ("A", "B", "C", "g_J", "g_I")
 ENERGY, SLOPE, QUADRATIC, SHIFT = range(4)
+CANCELLED = 1e-12  # of a contribution: what is left of two that are equal and opposite, beyond rounding
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -116,11 +117,16 @@ def terms_of(level: Level, moved: Movement, sign: float = 1.0) -> Terms:
 
 
 def add_terms(first: Terms, second: Terms) -> Terms:
-    """Add the contributions of two sublevels; those with the same key are the same constant."""
+    """Add the contributions of two sublevels; those with the same key are the same constant.
+
+    A constant whose contributions cancel drops out, so that nobody is told that its uncertainty is missing.
+    """
     total = dict(first)
     for key, (constant, name, numbers) in second.items():
-        known = total.get(key)
-        total[key] = (constant, name, numbers if known is None else known[2] + numbers)
+        known = total.pop(key, None)
+        together = numbers if known is None else known[2] + numbers
+        if np.any(np.abs(together) > CANCELLED * np.abs(numbers)):
+            total[key] = (constant, name, together)
     return total
 
 
