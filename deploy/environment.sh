@@ -27,8 +27,10 @@ PY
 }
 
 install_into() {  # environment, pinned packages
-    "$1/bin/python" -m pip install --quiet --disable-pip-version-check --no-input --no-deps --require-hashes -r "$2" \
-        || fail "the packages of $2 could not be installed: the first start needs a Python package index (see pip's own message above)"
+    "$1/bin/python" -m pip install --quiet --disable-pip-version-check --no-input --no-deps --require-hashes -r "$2" >>"$1.log" 2>&1 || {
+        tail -n 20 "$1.log" >&2
+        fail "the packages of $2 could not be installed: the first start needs a Python package index (pip's own words are above)"
+    }
     "$1/bin/python" - "$root" <<'PY'
 import pathlib, sys, sysconfig
 root, bin_ = sys.argv[1], pathlib.Path(sys.prefix, "bin")

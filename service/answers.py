@@ -1,0 +1,125 @@
+"""Shapes answers for the wire: scalars, curated values, sources, and the flat row that CSV makes of a record.
+
+Every record of a kind has the same keys in the same order; a missing value is null with a reason beside it.
+"""
+
+import math
+import re
+from collections.abc import Iterable, Mapping, Sequence
+from dataclasses import dataclass
+from typing import Any
+
+from levels.quantity import Quantity
+from service.citations import Publication
+from service.formats import Column, NotFinite, Table
+
+NOT_IN_CATALOGUE = "not in the catalogue"
+UNSOURCED = "computed"
+
+
+@dataclass(frozen=True, slots=True)
+class Answer:
+    """What a question is answered with: its own members, perhaps a table, and what the numbers rest on.
+
+    `used` pairs each curated input with what it was used for; sources and the refusal of recalled inputs come from it.
+    """
+
+    content: Mapping[str, Any]
+    table: Table | None = None
+    columnar: bool = True  # the table is part of the JSON; records are listed there instead
+    used: Sequence[tuple[str, Quantity]] = ()
+    warnings: Sequence[str] = ()
+    uncertainty_excludes: Sequence[str] = ()
+
+
+def finite(value: float) -> float:
+    """The value, or NotFinite: NaN and infinity never leave."""
+    if not math.isfinite(value):
+        raise NotFinite("a computed number is not finite")
+    return value
+
+
+def scalar(value: float | None, uncertainty: float | None, unit: str, reason: str = "") -> dict[str, Any]:
+    """A computed number. `reason` says why the value, or failing that its uncertainty, is null."""
+    return {
+        "value": None if value is None else finite(value),
+        "uncertainty": None if uncertainty is None else finite(uncertainty),
+        "unit": unit,
+        "reason": reason,
+    }
+
+
+def curated(quantity: Quantity | None, unit: str, reason: str = NOT_IN_CATALOGUE) -> dict[str, Any]:
+    """A curated number with the digits as published, where they come from and what others published."""
+    if quantity is None:
+        empty = {"text": "", "source": "", "evidence": "", "note": ""}
+        return {"value": None, "uncertainty": None, "unit": unit, **empty, "alternatives": [], "reason": reason}
+    return {
+        **_published(quantity),
+        "alternatives": [_published(other) for other in quantity.alternatives],
+        "reason": "" if quantity.uncertainty is not None else "no uncertainty is stated",
+    }
+
+
+def _published(quantity: Quantity) -> dict[str, Any]:
+    return {
+        "value": finite(quantity.value),
+        "uncertainty": quantity.uncertainty,
+        "unit": quantity.unit,
+        "text": quantity.text,
+        "source": quantity.source,
+        "evidence": quantity.evidence,
+        "note": quantity.note,
+    }
+
+
+def sources_of(used: Iterable[tuple[str, Quantity]], publications: Mapping[str, Publication]) -> list[dict[str, Any]]:
+    """One record for each publication and evidence among the inputs, with what it was used for."""
+    records: dict[tuple[str, str, str], dict[str, Any]] = {}
+    for purpose, quantity in used:
+        for key in quantity.sources or (UNSOURCED,):
+            place = (key, quantity.evidence, quantity.note if key == UNSOURCED else "")
+            if place not in records:
+                records[place] = _source(key, quantity, publications)
+            if purpose not in records[place]["used_for"]:
+                records[place]["used_for"].append(purpose)
+    return list(records.values())
+
+
+def _source(key: str, quantity: Quantity, publications: Mapping[str, Publication]) -> dict[str, Any]:
+    known = publications.get(key)
+    if known is None:
+        note = "a value of this laboratory's own" if key.startswith("overlay:") else quantity.note
+        return {"id": key, "citation": note, "doi": "", "evidence": quantity.evidence, "used_for": []}
+    return {"id": key, "citation": known.citation, "doi": known.doi, "evidence": quantity.evidence, "used_for": []}
+
+
+def records_table(records: Sequence[Mapping[str, Any]]) -> Table:
+    """Records as columns: a number's unit moves into its column's name, lists become text."""
+    rows = [flat_row(record) for record in records]
+    columns: dict[str, Column] = {name: [row.get(name) for row in rows] for row in rows[:1] for name in row}
+    return Table(columns)
+
+
+def flat_row(record: Mapping[str, Any]) -> dict[str, Any]:
+    """One record as the cells of one row."""
+    row: dict[str, Any] = {}
+    for name, value in record.items():
+        if isinstance(value, Mapping) and "value" in value and "unit" in value:
+            suffix = unit_suffix(str(value["unit"]))
+            row[name + suffix] = value["value"]
+            row[f"{name}_uncertainty{suffix}"] = value["uncertainty"]
+            row.update({f"{name}_{key}": value[key] for key in ("text", "source", "evidence") if key in value})
+        elif isinstance(value, Mapping):
+            row.update({f"{name}_{key}": cell for key, cell in flat_row(value).items()})
+        elif isinstance(value, (list, tuple)):
+            row[name] = "; ".join(map(str, value))
+        else:
+            row[name] = value
+    return row
+
+
+def unit_suffix(unit: str) -> str:
+    """The end of a key that names the unit, as an identifier: "MHz/G" is `_MHz_per_G`; a bare number has none."""
+    words = re.sub(r"[^A-Za-z0-9]+", "_", unit.replace("/", "_per_").replace("^", "").replace("-", "_m")).strip("_")
+    return f"_{words}" if words and words != "1" else ""

@@ -1,0 +1,119 @@
+"""A small client: `Client("http://127.0.0.1:8000").shift("87Rb", line=780, lower="2,2", upper="3,3", field=3.2)`.
+
+Every question is a method of its own and answers with the record that the server documents; a refused question raises
+`Refused` with the problem's members.
+"""
+
+from types import TracebackType
+from typing import Any, Self, TypeVar
+from urllib.parse import quote
+
+import httpx2
+from pydantic import BaseModel
+
+from service.problems import ProblemBody
+from service.routes import angular, catalogue, components, field, insensitive, shift, strengths, sublevels, sweep
+
+Answer = TypeVar("Answer", bound=BaseModel)
+
+
+class Refused(Exception):
+    """The server answered with a problem; `problem` says what would do."""
+
+    def __init__(self, problem: ProblemBody) -> None:
+        super().__init__(f"{problem.title}: {problem.detail}")
+        self.problem = problem
+
+
+class Client:
+    """One connection to a server; usable in a `with` statement."""
+
+    def __init__(self, base_url: str = "http://127.0.0.1:8000", *, seconds: float = 30.0) -> None:
+        self._http = httpx2.Client(base_url=base_url, timeout=seconds)
+
+    def __enter__(self) -> Self:
+        return self
+
+    def __exit__(self, kind: type[BaseException] | None, error: BaseException | None, at: TracebackType | None) -> None:
+        self.close()
+
+    def close(self) -> None:
+        """Close the connection."""
+        self._http.close()
+
+    def atoms(self) -> catalogue.AtomsAnswered:
+        """Every isotope."""
+        return self._get("/v1/atoms", {}, catalogue.AtomsAnswered)
+
+    def atom(self, atom: str) -> catalogue.AtomAnswered:
+        """One isotope."""
+        return self._get(_atom(atom), {}, catalogue.AtomAnswered)
+
+    def levels(self, atom: str) -> catalogue.LevelsAnswered:
+        """Every level of an isotope."""
+        return self._get(f"{_atom(atom)}/levels", {}, catalogue.LevelsAnswered)
+
+    def lines(self, atom: str) -> catalogue.LinesAnswered:
+        """Every line of an isotope."""
+        return self._get(f"{_atom(atom)}/lines", {}, catalogue.LinesAnswered)
+
+    def release(self) -> catalogue.ReleaseAnswered:
+        """The data release."""
+        return self._get("/v1/release", {}, catalogue.ReleaseAnswered)
+
+    def shift(self, atom: str, **asked: Any) -> shift.ShiftAnswered:
+        """One component of a line: `line`, `lower`, `upper`, `field`."""
+        return self._get(f"{_atom(atom)}/shift", asked, shift.ShiftAnswered)
+
+    def sublevels(self, atom: str, **asked: Any) -> sublevels.SublevelsAnswered:
+        """Every sublevel of a level: `level`, `field`."""
+        return self._get(f"{_atom(atom)}/sublevels", asked, sublevels.SublevelsAnswered)
+
+    def components(self, atom: str, **asked: Any) -> components.ComponentsAnswered:
+        """Every component of a line: `line`, `field`, `polarisation`."""
+        return self._get(f"{_atom(atom)}/components", asked, components.ComponentsAnswered)
+
+    def strengths(self, atom: str, **asked: Any) -> strengths.StrengthsAnswered:
+        """The hyperfine components of a line: `line`."""
+        return self._get(f"{_atom(atom)}/strengths", asked, strengths.StrengthsAnswered)
+
+    def insensitive(self, atom: str, **asked: Any) -> insensitive.InsensitiveAnswered:
+        """Field-insensitive pairs: `level`, `upper_level`, `max_field`, `max_dm`."""
+        return self._get(f"{_atom(atom)}/insensitive", asked, insensitive.InsensitiveAnswered)
+
+    def field(self, atom: str, **asked: Any) -> field.FieldAnswered:
+        """The field of a splitting: `level`, `lower`, `upper`, `splitting`, `uncertainty`, `max_field`."""
+        return self._get(f"{_atom(atom)}/field", asked, field.FieldAnswered)
+
+    def lande(self, **asked: Any) -> angular.LandeAnswered:
+        """Lande factors: `J`, `L`, `S`, `I`, `F`."""
+        return self._get("/v1/angular/lande", asked, angular.LandeAnswered)
+
+    def clebsch_gordan(self, **asked: Any) -> angular.SymbolAnswered:
+        """Clebsch-Gordan coefficient: `j1`, `m1`, `j2`, `m2`, `j`, `m`."""
+        return self._get("/v1/angular/clebsch-gordan", asked, angular.SymbolAnswered)
+
+    def three_j(self, **asked: Any) -> angular.SymbolAnswered:
+        """3j symbol: `j1`, `j2`, `j3`, `m1`, `m2`, `m3`."""
+        return self._get("/v1/angular/3j", asked, angular.SymbolAnswered)
+
+    def six_j(self, **asked: Any) -> angular.SymbolAnswered:
+        """6j symbol: `j1` to `j6`."""
+        return self._get("/v1/angular/6j", asked, angular.SymbolAnswered)
+
+    def sweep(self, **asked: Any) -> sweep.SweepAnswered:
+        """Sublevels or components over a grid: `atom`, `level` or `line`, `fields`, `columns`."""
+        return _read(self._http.post("/v1/sweep", json=asked), sweep.SweepAnswered)
+
+    def _get(self, path: str, asked: dict[str, Any], model: type[Answer]) -> Answer:
+        return _read(self._http.get(path, params={key: str(value) for key, value in asked.items()}), model)
+
+
+def _atom(name: str) -> str:
+    return f"/v1/atoms/{quote(name, safe='')}"
+
+
+def _read(response: httpx2.Response, model: type[Answer]) -> Answer:
+    if response.status_code != 200:
+        raise Refused(ProblemBody.model_validate_json(response.content))
+    return model.model_validate_json(response.content)

@@ -1,0 +1,87 @@
+"""The kinds of value that questions take: text of the trade's notation in, bare numbers inside, the same text echoed.
+
+Fields become gauss and frequencies MHz; angular momenta are doubled integers inside and decimals in the echo.
+"""
+
+from typing import Annotated, Any
+
+from pydantic import BeforeValidator, Field, PlainSerializer, WithJsonSchema
+
+from levels.errors import OutsideValidity
+from levels.notation import (
+    LONGEST_NAME,
+    format_half,
+    format_sublevel,
+    parse_half,
+    parse_polarisation,
+    parse_sublevel,
+    shown,
+)
+from levels.quantity import parse_quantity_input
+from levels.sublevels import LARGEST_FIELD_GAUSS
+
+Name = Annotated[str, Field(min_length=1, max_length=LONGEST_NAME)]
+
+
+def _text(given: Any, parameter: str, allowed: str) -> str:
+    if isinstance(given, bool) or not isinstance(given, (str, int, float)):
+        raise OutsideValidity(parameter, shown(str(given)), allowed)
+    return given if isinstance(given, str) else repr(given)
+
+
+def _plus(text: str) -> str:
+    """A plus sign that a query string made a blank: "1e 3" and " 2.5" mean 1e+3 and +2.5."""
+    return text.replace("e ", "e+").replace("E ", "E+")
+
+
+def _reader(dimension: str, unit: str, low: float, high: float) -> BeforeValidator:
+    """Reads a number with an optional unit, between two bounds in its canonical unit."""
+    allowed = f"from {low:.12g} to {high:.12g} {unit}"
+
+    def read(given: Any) -> float:
+        value = parse_quantity_input(_plus(_text(given, dimension, allowed)), dimension, unit)
+        if not low <= value <= high:
+            raise OutsideValidity(dimension, shown(str(given)), allowed)
+        return value
+
+    return BeforeValidator(read)
+
+
+NUMBER_OR_TEXT = WithJsonSchema({"anyOf": [{"type": "number"}, {"type": "string"}]}, mode="validation")
+FieldGauss = Annotated[float, _reader("field", "G", -LARGEST_FIELD_GAUSS, LARGEST_FIELD_GAUSS), NUMBER_OR_TEXT]
+LargestField = Annotated[float, _reader("field", "G", 1e-6, LARGEST_FIELD_GAUSS), NUMBER_OR_TEXT]
+SplittingMhz = Annotated[float, _reader("frequency", "MHz", -1e9, 1e9), NUMBER_OR_TEXT]
+SpreadMhz = Annotated[float, _reader("frequency", "MHz", 0.0, 1e9), NUMBER_OR_TEXT]
+
+
+def _sublevel(given: Any) -> tuple[int, int]:
+    return parse_sublevel(_text(given, "sublevel", "F,m such as 2,-1"))
+
+
+def _half(given: Any) -> int:
+    return parse_half(_text(given, "half-integer", "an integer or half-integer such as 2, 3/2 or 1.5"))
+
+
+def _polarisation(given: Any) -> int:
+    return parse_polarisation(_text(given, "polarisation", "sigma+, pi or sigma-")).q
+
+
+Sublevel = Annotated[
+    tuple[int, int],
+    BeforeValidator(_sublevel),
+    PlainSerializer(lambda pair: format_sublevel(*pair), return_type=str),
+    WithJsonSchema({"type": "string", "description": "F,m at zero field, as `2,-1` or `3/2,1/2`; F is J for I = 0"}),
+]
+Half = Annotated[
+    int,
+    BeforeValidator(_half),
+    PlainSerializer(lambda twice: format_half(twice), return_type=str),
+    WithJsonSchema({"type": "string", "description": "an integer or half-integer, as `2`, `3/2` or `1.5`"}),
+]
+POLARISATIONS = {1: "sigma+", 0: "pi", -1: "sigma-"}
+PolarisationName = Annotated[
+    int,
+    BeforeValidator(_polarisation),
+    PlainSerializer(lambda q: POLARISATIONS[q], return_type=str),
+    WithJsonSchema({"type": "string", "description": "sigma+, pi or sigma- (the plus sign as %2B in a query string)"}),
+]

@@ -1,0 +1,314 @@
+"""The catalogue: atoms, levels, lines, the publications behind them and the release."""
+
+from collections import Counter
+from collections.abc import Iterable, Iterator, Mapping, Sequence
+from dataclasses import fields, replace
+from typing import Any
+
+from pydantic import Field
+
+from levels.errors import UnknownName
+from levels.notation import nearest
+from levels.quantity import Quantity
+from levels.records import Atom, Isotope, Level, Line
+from service import VERSION
+from service.answers import NOT_IN_CATALOGUE, Answer, curated, records_table
+from service.context import Context
+from service.question import Asked, Question
+from service.schemas import Answered, Curated, Half, Shape, Texts
+
+Records = list[dict[str, Any]]
+
+
+class NothingAsked(Asked):
+    """A question without parameters of its own."""
+
+
+class AtomRecord(Shape):
+    """An isotope of one charge."""
+
+    name: str
+    element: str
+    charge: int
+    Z: int
+    mass_number: int
+    nuclear_spin: Half
+    ground_level: str
+
+
+class AtomsAnswered(Answered):
+    """Every isotope."""
+
+    atoms: list[AtomRecord]
+
+
+class AtomAnswered(Answered):
+    """One isotope."""
+
+    name: str
+    element: str
+    charge: int
+    Z: int
+    mass_number: int
+    nuclear_spin: Half
+    ground_level: str
+    mass: Curated = Field(description="of the neutral atom")
+    abundance: Curated
+    half_life: Curated
+    g_I: Curated = Field(description="in Bohr magnetons, with the sign of H = muB (g_J J + g_I I) B")
+    moment: Curated = Field(description="nuclear magnetic moment")
+    quadrupole: Curated = Field(description="nuclear electric quadrupole moment")
+    levels: Texts
+    lines: Texts
+
+
+class LevelRecord(Shape):
+    """One level of an isotope."""
+
+    name: str
+    aliases: Texts
+    configuration: str
+    term: str
+    coupling: str
+    J: Half
+    parity: str
+    energy: Curated = Field(description="above the ground level, between hyperfine centroids")
+    energy_of: str = Field(description="the isotope whose energy this is, or natural")
+    lifetime: Curated
+    width: Curated = Field(description="full natural width Gamma/2pi")
+    g_J: Curated
+    g_I: Curated = Field(description="in Bohr magnetons")
+    A: Curated = Field(description="magnetic dipole hyperfine constant")
+    B: Curated = Field(description="electric quadrupole hyperfine constant")
+    C: Curated = Field(description="magnetic octupole hyperfine constant")
+    notes: Texts
+
+
+class LevelsAnswered(Answered):
+    """Every level of an isotope."""
+
+    atom: str
+    levels: list[LevelRecord]
+
+
+class LineRecord(Shape):
+    """One line of an isotope."""
+
+    name: str
+    aliases: Texts
+    lower: str
+    upper: str
+    multipole: str
+    photons: int
+    nominal_nm: float = Field(description="vacuum wavelength that names the line")
+    frequency: Curated = Field(description="between hyperfine centroids")
+    frequency_of: str = Field(description="the isotope whose frequency this is, or natural")
+    wavelength: Curated = Field(description="in vacuum")
+    einstein_A: Curated = Field(description="rate of this line alone")
+    branching: Curated = Field(description="fraction of the upper level's decays")
+    reduced_dipole: Curated
+    induced: str = Field(description="what opens a line that J and the multipole alone forbid; else empty")
+    notes: Texts
+
+
+class LinesAnswered(Answered):
+    """Every line of an isotope."""
+
+    atom: str
+    lines: list[LineRecord]
+
+
+class SourceAnswered(Answered):
+    """One publication."""
+
+    id: str
+    citation: str
+    doi: str
+    csl: dict[str, Any] = Field(description="the entry as a CSL-JSON item")
+
+
+class ReleaseAnswered(Answered):
+    """The data release and the program that serves it."""
+
+    version: str = Field(description="version of the program")
+    species: int
+    isotopes: int
+    levels: int = Field(description="counted once for each isotope")
+    lines: int = Field(description="counted once for each isotope")
+    publications: int
+    checked: int = Field(description="values compared with their publication or with an open data set")
+    recalled: int = Field(description="values entered from memory of their publication")
+    computed: int = Field(description="values that follow from others by a stated formula")
+    overlaid: Texts = Field(description="species with values of this laboratory's own")
+
+
+def isotope_record(isotope: Isotope) -> dict[str, Any]:
+    """An isotope as the list has it."""
+    return {
+        "name": isotope.name,
+        "element": isotope.symbol,
+        "charge": isotope.charge,
+        "Z": isotope.Z,
+        "mass_number": isotope.mass_number,
+        "nuclear_spin": isotope.twice_I / 2,
+        "ground_level": isotope.ground,
+    }
+
+
+def level_record(level: Level) -> dict[str, Any]:
+    """A level as the list has it."""
+    no_spin = "I = 0" if not level.twice_I else "J = 0"
+    dipole = NOT_IN_CATALOGUE if level.twice_J and level.twice_I else no_spin
+    quadrupole = NOT_IN_CATALOGUE if level.twice_J > 1 and level.twice_I > 1 else "needs I and J of 1 or more"
+    octupole = NOT_IN_CATALOGUE if level.twice_J > 2 and level.twice_I > 2 else "needs I and J of 3/2 or more"
+    return {
+        "name": level.name,
+        "aliases": list(level.aliases),
+        "configuration": level.configuration,
+        "term": level.term,
+        "coupling": level.coupling,
+        "J": level.twice_J / 2,
+        "parity": "even" if level.parity > 0 else "odd",
+        "energy": curated(level.energy, "cm-1"),
+        "energy_of": level.energy_of,
+        "lifetime": curated(level.lifetime, "s"),
+        "width": curated(level.width, "MHz"),
+        "g_J": curated(level.g_J, "1", NOT_IN_CATALOGUE if level.twice_J else "J = 0"),
+        "g_I": curated(level.g_I, "1", NOT_IN_CATALOGUE if level.twice_I else "I = 0"),
+        "A": curated(level.A, "MHz", dipole),
+        "B": curated(level.B, "MHz", quadrupole),
+        "C": curated(level.C, "MHz", octupole),
+        "notes": list(level.notes),
+    }
+
+
+def line_record(line: Line) -> dict[str, Any]:
+    """A line as the list has it."""
+    return {
+        "name": line.name,
+        "aliases": list(line.aliases),
+        "lower": line.lower.name,
+        "upper": line.upper.name,
+        "multipole": line.multipole,
+        "photons": line.photons,
+        "nominal_nm": line.nominal_nm,
+        "frequency": curated(line.centroid, "MHz"),
+        "frequency_of": line.centroid_isotope,
+        "wavelength": curated(line.wavelength, "nm"),
+        "einstein_A": curated(line.einstein_A, "s-1"),
+        "branching": curated(line.branching, "1"),
+        "reduced_dipole": curated(line.reduced_dipole, "e*a0"),
+        "induced": line.induced,
+        "notes": list(line.notes),
+    }
+
+
+def quantities(records: Iterable[Isotope | Level | Line]) -> Iterator[tuple[str, Quantity]]:
+    """Every curated value of some records, with its name."""
+    for record in records:
+        owner = record.name if isinstance(record, Isotope) else f"{record.atom} {record.name}"
+        for item in fields(record):
+            value = getattr(record, item.name)
+            if isinstance(value, Quantity):
+                yield f"{item.name} of {owner}", value
+
+
+def everything(context: Context) -> Iterator[tuple[str, Quantity]]:
+    """Every curated value of the catalogue; g_I only with its isotope."""
+    for isotope in context.catalogue.atoms():
+        atom = context.atom(isotope.name)
+        yield from quantities([isotope, *atom.levels, *atom.lines])
+
+
+def atoms(context: Context, path: Mapping[str, str], asked: Asked) -> Answer:
+    """Every isotope of the catalogue, by nuclear charge, ionic charge and mass."""
+    return _listed({}, "atoms", [isotope_record(isotope) for isotope in context.catalogue.atoms()], ())
+
+
+def atom(context: Context, path: Mapping[str, str], asked: Asked) -> Answer:
+    """One isotope: mass, spin, abundance, moments, and the names of its levels and lines."""
+    found = context.atom(path["atom"])
+    isotope = found.isotope
+    spinless = NOT_IN_CATALOGUE if isotope.twice_I else "I = 0"
+    content = {
+        **isotope_record(isotope),
+        "mass": curated(isotope.mass, "u"),
+        "abundance": curated(isotope.abundance, "1"),
+        "half_life": curated(isotope.half_life, "s", "none in the catalogue: stable, or not curated"),
+        "g_I": curated(isotope.g_I, "1", spinless),
+        "moment": curated(isotope.moment, "muN", spinless),
+        "quadrupole": curated(isotope.quadrupole, "b", NOT_IN_CATALOGUE if isotope.twice_I > 1 else "I below 1"),
+        "levels": [level.name for level in found.levels],
+        "lines": [line.name for line in found.lines],
+    }
+    return Answer(content, used=list(quantities([isotope])))
+
+
+def levels(context: Context, path: Mapping[str, str], asked: Asked) -> Answer:
+    """Every level of an isotope with its constants."""
+    found = context.atom(path["atom"])
+    return _listed({"atom": found.isotope.name}, "levels", list(map(level_record, found.levels)), found.levels)
+
+
+def lines(context: Context, path: Mapping[str, str], asked: Asked) -> Answer:
+    """Every line of an isotope with its frequency and rates."""
+    found = context.atom(path["atom"])
+    return _listed({"atom": found.isotope.name}, "lines", list(map(line_record, found.lines)), found.lines)
+
+
+def _listed(content: dict[str, Any], key: str, records: Records, used: Sequence[Level | Line]) -> Answer:
+    return Answer({**content, key: records}, records_table(records), columnar=False, used=list(quantities(used)))
+
+
+def sources(context: Context, path: Mapping[str, str], asked: Asked) -> Answer:
+    """Every publication that a value rests on, with the values."""
+    return Answer({}, used=list(everything(context)))
+
+
+def source(context: Context, path: Mapping[str, str], asked: Asked) -> Answer:
+    """One publication, and the values that rest on it."""
+    known = context.publications.get(path["id"])
+    if known is None:
+        raise UnknownName("source", path["id"], nearest(path["id"], context.publications))
+    mine = ((name, value) for name, value in everything(context) if known.id in value.sources)
+    used = [(name, replace(value, source=known.id)) for name, value in mine]
+    return Answer({"id": known.id, "citation": known.citation, "doi": known.doi, "csl": dict(known.csl)}, used=used)
+
+
+def release(context: Context, path: Mapping[str, str], asked: Asked) -> Answer:
+    """The data release, how much it holds, and how much of it was compared with its publication."""
+    catalogue = context.catalogue
+    found: list[Atom] = [context.atom(name) for name in catalogue.names]
+    tally = Counter(value.evidence for _, value in everything(context))
+    content = {
+        "version": VERSION,
+        "species": len(catalogue.elements),
+        "isotopes": len(found),
+        "levels": sum(len(one.levels) for one in found),
+        "lines": sum(len(one.lines) for one in found),
+        "publications": len(context.publications),
+        **{evidence: tally[evidence] for evidence in ("checked", "recalled", "computed")},
+        "overlaid": list(catalogue.overlaid),
+    }
+    return Answer(content)
+
+
+def _question(
+    name: str, path: str, answered: Any, ask: Any, summary: str, example: str, heavy: bool = False
+) -> Question:
+    return Question(name, path, NothingAsked, answered, ask, summary, example, "catalogue", heavy=heavy)
+
+
+QUESTIONS = (
+    _question("atoms", "/v1/atoms", AtomsAnswered, atoms, "Every isotope", "/v1/atoms"),
+    _question("atom", "/v1/atoms/{atom}", AtomAnswered, atom, "One isotope", "/v1/atoms/87Rb"),
+    _question(
+        "levels", "/v1/atoms/{atom}/levels", LevelsAnswered, levels, "Levels of an isotope", "/v1/atoms/87Rb/levels"
+    ),
+    _question("lines", "/v1/atoms/{atom}/lines", LinesAnswered, lines, "Lines of an isotope", "/v1/atoms/87Rb/lines"),
+    _question("sources", "/v1/sources", Answered, sources, "Every publication", "/v1/sources", heavy=True),
+    _question(
+        "source", "/v1/sources/{id}", SourceAnswered, source, "One publication", "/v1/sources/ye1996", heavy=True
+    ),
+    _question("release", "/v1/release", ReleaseAnswered, release, "The data release", "/v1/release", heavy=True),
+)

@@ -1,0 +1,135 @@
+"""`components`: every component of a line in a field."""
+
+from collections.abc import Mapping
+from typing import Any
+
+import numpy as np
+from pydantic import Field
+
+from levels.components import Components, components
+from levels.notation import format_polarisation
+from levels.records import Line
+from levels.sensitivity import ENERGY, QUADRATIC, SHIFT, SLOPE
+from levels.uncertainty import component_spread
+from service.answers import Answer
+from service.context import Context
+from service.formats import Column, Table
+from service.inputs import line_inputs, line_warnings
+from service.parameters import FieldGauss, Name, PolarisationName
+from service.question import Computed, Question
+from service.routes.shift import NO_CENTROID, NO_STRENGTH, NO_UNCERTAINTY
+from service.schemas import Labels, MaybeNumbers, Numbers, Shape, Tabular, Texts
+
+
+class ComponentsAsked(Computed):
+    """Every component at one field."""
+
+    line: Name = Field(description="line, as `780`, `D2` or `5s_2S1/2->5p_2P3/2`", examples=["780"])
+    field: FieldGauss = Field(0.0, description="magnetic field along z, in gauss or with a unit", examples=["3.2"])
+    polarisation: PolarisationName | None = Field(
+        None, description="only components of this polarisation: sigma+, pi or sigma-", examples=["sigma+"]
+    )
+
+
+class ComponentColumns(Shape):
+    """One row for each component, by F, m, F', m'."""
+
+    lower_F: Labels
+    lower_m: Labels
+    upper_F: Labels
+    upper_m: Labels
+    polarisation: Texts = Field(description="sigma+, pi, sigma-; q=+2 and the like for multipoles beyond the dipole")
+    offset_MHz: Numbers = Field(description="frequency less that of the line's centroid")
+    offset_uncertainty_MHz: Numbers
+    frequency_THz: MaybeNumbers
+    frequency_uncertainty_THz: MaybeNumbers
+    shift_MHz: Numbers = Field(description="offset less that of the same component at zero field")
+    shift_uncertainty_MHz: Numbers
+    slope_MHz_per_G: Numbers
+    slope_uncertainty_MHz_per_G: Numbers
+    quadratic_Hz_per_G2: Numbers = Field(description="half the second derivative at this field")
+    quadratic_uncertainty_Hz_per_G2: Numbers
+    strength: MaybeNumbers = Field(description="share in the decays of the upper sublevel to the lower level")
+    strength_at_zero_field: Texts = Field(description="the same at zero field, as an exact fraction")
+
+
+class ComponentsAnswered(Tabular):
+    """Every component at one field."""
+
+    atom: str
+    line: str
+    lower_level: str
+    upper_level: str
+    columns: ComponentColumns
+
+
+def frequency_columns(line: Line, offset_mhz: Any, sigma_mhz: Any) -> tuple[dict[str, Column], dict[str, str]]:
+    """The absolute frequencies with their uncertainties, and why one is missing."""
+    names = ("frequency_THz", "frequency_uncertainty_THz")
+    nothing: Column = [None] * len(offset_mhz)
+    centroid = line.centroid
+    if centroid is None:
+        return dict.fromkeys(names, nothing), dict.fromkeys(names, NO_CENTROID)
+    frequency: Column = (centroid.value + offset_mhz) * 1e-6
+    if centroid.uncertainty is None:
+        return {names[0]: frequency, names[1]: nothing}, {names[1]: NO_UNCERTAINTY}
+    return {names[0]: frequency, names[1]: np.hypot(centroid.uncertainty, sigma_mhz) * 1e-6}, {}
+
+
+def label_columns(found: Components) -> dict[str, Column]:
+    """The labels of the components' two ends, as decimals, and their polarisations."""
+    return {
+        "lower_F": found.lower_twice_F / 2,
+        "lower_m": found.lower_twice_m / 2,
+        "upper_F": found.upper_twice_F / 2,
+        "upper_m": found.upper_twice_m / 2,
+        "polarisation": [format_polarisation(q) for q in found.q.tolist()],
+    }
+
+
+def answer_components(context: Context, path: Mapping[str, str], asked: ComponentsAsked) -> Answer:
+    """Every component that the line's multipole allows: where it lies, how it moves, how strong it is.
+
+    Strengths are normalised so that all decays of one upper sublevel to the lower level sum to 1. Components that are
+    closed at zero field and that the field opens are listed too.
+    """
+    line = context.line(path["atom"], asked.line)
+    found = components(line, asked.field, asked.polarisation)
+    spread = component_spread(line, asked.field, asked.polarisation)
+    sigma, rows = spread.uncertainty[:, 0], len(found.zero_field_strength)
+    frequencies, missing = frequency_columns(line, found.offset_mhz[0], sigma[ENERGY])
+    if not found.strength_known:
+        missing["strength"] = NO_STRENGTH
+    columns: dict[str, Column] = {
+        **label_columns(found),
+        "offset_MHz": found.offset_mhz[0],
+        "offset_uncertainty_MHz": sigma[ENERGY],
+        **frequencies,
+        "shift_MHz": found.shift_mhz[0],
+        "shift_uncertainty_MHz": sigma[SHIFT],
+        "slope_MHz_per_G": found.slope_mhz_per_gauss[0],
+        "slope_uncertainty_MHz_per_G": sigma[SLOPE],
+        "quadratic_Hz_per_G2": found.quadratic_hz_per_gauss2[0],
+        "quadratic_uncertainty_Hz_per_G2": sigma[QUADRATIC],
+        "strength": found.strength[0] if found.strength_known else [None] * rows,
+        "strength_at_zero_field": [str(part) if found.strength_known else "" for part in found.zero_field_strength],
+    }
+    return Answer(
+        {"atom": line.atom, "line": line.name, "lower_level": line.lower.name, "upper_level": line.upper.name},
+        Table(columns, missing),
+        used=line_inputs(line),
+        warnings=line_warnings(line, asked.field),
+        uncertainty_excludes=spread.excludes,
+    )
+
+
+QUESTION = Question(
+    name="components",
+    path="/v1/atoms/{atom}/components",
+    asked=ComponentsAsked,
+    answered=ComponentsAnswered,
+    ask=answer_components,
+    summary="Every component of a line in a field",
+    example="/v1/atoms/87Rb/components?line=780&field=3.2&polarisation=sigma%2B",
+    tag="field",
+)

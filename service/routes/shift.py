@@ -1,0 +1,118 @@
+"""`shift`: what one component of a line does in a field."""
+
+from collections.abc import Mapping
+
+from pydantic import Field
+
+from levels.components import Component, component
+from levels.notation import format_polarisation
+from levels.records import Line
+from levels.sensitivity import ENERGY, QUADRATIC, SHIFT, SLOPE
+from service.answers import Answer, scalar
+from service.context import Context
+from service.inputs import line_inputs, line_warnings
+from service.parameters import FieldGauss, Name, Sublevel
+from service.question import Computed, Question
+from service.schemas import Answered, Half, Scalar
+
+NO_CENTROID = "the frequency of this line's centroid is not in the catalogue"
+NO_STRENGTH = "the line is opened by the field alone: its strength is not in this model"
+NO_UNCERTAINTY = "the uncertainty of this line's centroid is not stated"
+
+
+class ShiftAsked(Computed):
+    """One component at one field."""
+
+    line: Name = Field(description="line, as `780`, `D2` or `5s_2S1/2->5p_2P3/2`", examples=["780"])
+    lower: Sublevel = Field(description="F,m of the lower sublevel", examples=["2,2"])
+    upper: Sublevel = Field(description="F,m of the upper sublevel", examples=["3,3"])
+    field: FieldGauss = Field(description="magnetic field along z, in gauss or with a unit", examples=["3.2"])
+
+
+class ShiftAnswered(Answered):
+    """One component at one field."""
+
+    atom: str
+    line: str
+    lower_level: str
+    lower_F: Half
+    lower_m: Half
+    upper_level: str
+    upper_F: Half
+    upper_m: Half
+    polarisation: str = Field(description="sigma+, pi or sigma- for m' - m = 1, 0, -1; q=+2 and the like beyond")
+    frequency: Scalar = Field(description="frequency to set a laser to")
+    offset: Scalar = Field(description="frequency less that of the line's centroid")
+    shift: Scalar = Field(description="offset less that of the same component at zero field")
+    slope: Scalar = Field(description="how fast the frequency moves at this field")
+    quadratic: Scalar = Field(description="half the second derivative at this field")
+    strength: Scalar = Field(
+        description="share of this component in the decays of the upper sublevel to the lower level"
+    )
+    strength_at_zero_field: str = Field(description="the same at zero field, as an exact fraction")
+
+
+def shift(context: Context, path: Mapping[str, str], asked: ShiftAsked) -> Answer:
+    """The frequency of one component, its offset from the line's centroid, and how both move with the field.
+
+    Neglected: mixing of the fine-structure levels beyond second order, and the diamagnetic shift.
+    """
+    line = context.line(path["atom"], asked.line)
+    found = component(line, asked.lower, asked.upper, asked.field)
+    return Answer(
+        {**labels(line, found), **numbers(line, found)},
+        used=line_inputs(line),
+        warnings=line_warnings(line, asked.field),
+        uncertainty_excludes=found.spread.excludes,
+    )
+
+
+def labels(line: Line, found: Component) -> dict[str, str | float]:
+    """What names the component."""
+    return {
+        "atom": line.atom,
+        "line": line.name,
+        "lower_level": line.lower.name,
+        "lower_F": found.lower[0] / 2,
+        "lower_m": found.lower[1] / 2,
+        "upper_level": line.upper.name,
+        "upper_F": found.upper[0] / 2,
+        "upper_m": found.upper[1] / 2,
+        "polarisation": format_polarisation(found.q),
+    }
+
+
+def numbers(line: Line, found: Component) -> dict[str, object]:
+    """What the component does."""
+    spread = found.spread.uncertainty[:, 0, 0].tolist()
+    known = found.strength_known
+    return {
+        "frequency": _frequency(found),
+        "offset": scalar(found.offset_mhz, spread[ENERGY], "MHz"),
+        "shift": scalar(found.shift_mhz, spread[SHIFT], "MHz"),
+        "slope": scalar(found.slope_mhz_per_gauss, spread[SLOPE], "MHz/G"),
+        "quadratic": scalar(found.quadratic_hz_per_gauss2, spread[QUADRATIC], "Hz/G2"),
+        "strength": scalar(
+            found.strength if known else None, None, "1", "uncertainty not computed" if known else NO_STRENGTH
+        ),
+        "strength_at_zero_field": str(found.zero_field_strength) if known else "",
+    }
+
+
+def _frequency(found: Component) -> dict[str, object]:
+    frequency, spread = found.frequency_mhz, found.frequency_uncertainty_mhz
+    if frequency is None:
+        return scalar(None, None, "THz", NO_CENTROID)
+    return scalar(frequency * 1e-6, None if spread is None else spread * 1e-6, "THz", "" if spread else NO_UNCERTAINTY)
+
+
+QUESTION = Question(
+    name="shift",
+    path="/v1/atoms/{atom}/shift",
+    asked=ShiftAsked,
+    answered=ShiftAnswered,
+    ask=shift,
+    summary="One component of a line in a field",
+    example="/v1/atoms/87Rb/shift?line=780&lower=2,2&upper=3,3&field=3.2",
+    tag="field",
+)

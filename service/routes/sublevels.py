@@ -1,0 +1,98 @@
+"""`sublevels`: every sublevel of a level in a field."""
+
+from collections.abc import Mapping
+
+import numpy as np
+from pydantic import Field
+
+from levels.sensitivity import ENERGY, QUADRATIC, SHIFT, SLOPE
+from levels.sublevels import Sublevels, sublevels
+from levels.uncertainty import sublevel_spread
+from service.answers import Answer
+from service.context import Context
+from service.formats import Column, Table
+from service.inputs import level_inputs, level_warnings
+from service.parameters import FieldGauss, Name
+from service.question import Computed, Question
+from service.schemas import Labels, Numbers, Shape, Tabular
+
+
+class SublevelsAsked(Computed):
+    """Every sublevel at one field."""
+
+    level: Name = Field(description="level, as `5s_2S1/2` (`5S1/2` where that is unambiguous)", examples=["5s_2S1/2"])
+    field: FieldGauss = Field(0.0, description="magnetic field along z, in gauss or with a unit", examples=["3.2"])
+
+
+class SublevelColumns(Shape):
+    """One row for each sublevel, by F and then m."""
+
+    F: Labels = Field(description="zero-field label; J for I = 0")
+    m: Labels
+    m_J: Labels = Field(description="high-field label")
+    m_I: Labels = Field(description="high-field label")
+    energy_MHz: Numbers = Field(description="from the level's hyperfine centroid")
+    energy_uncertainty_MHz: Numbers
+    shift_MHz: Numbers = Field(description="from the same sublevel at zero field")
+    shift_uncertainty_MHz: Numbers
+    slope_MHz_per_G: Numbers
+    slope_uncertainty_MHz_per_G: Numbers
+    quadratic_Hz_per_G2: Numbers = Field(description="half the second derivative at this field")
+    quadratic_uncertainty_Hz_per_G2: Numbers
+    moment_muB: Numbers = Field(description="magnetic moment along z: less the slope, in Bohr magnetons")
+
+
+class SublevelsAnswered(Tabular):
+    """Every sublevel at one field."""
+
+    atom: str
+    level: str
+    columns: SublevelColumns
+
+
+def label_columns(found: Sublevels) -> dict[str, Column]:
+    """The labels of the sublevels, as decimals."""
+    pairs = (("F", found.twice_F), ("m", found.twice_m), ("m_J", found.twice_mJ), ("m_I", found.twice_mI))
+    return {name: twice / 2 for name, twice in pairs}
+
+
+def answer_sublevels(context: Context, path: Mapping[str, str], asked: SublevelsAsked) -> Answer:
+    """Energy, shift, slope, quadratic coefficient and moment of every sublevel of a level at one field.
+
+    Energies count from the level's hyperfine centroid. Uncertainties come from those of A, B, C, g_J and g_I; inputs
+    without one are listed in `uncertainty_excludes`.
+    """
+    level = context.level(path["atom"], asked.level)
+    found, spread = sublevels(level, asked.field), sublevel_spread(level, asked.field)
+    sigma = spread.uncertainty[:, 0]
+    columns: dict[str, Column] = {
+        **label_columns(found),
+        "energy_MHz": found.energy_mhz[0],
+        "energy_uncertainty_MHz": sigma[ENERGY],
+        "shift_MHz": found.shift_mhz[0],
+        "shift_uncertainty_MHz": sigma[SHIFT],
+        "slope_MHz_per_G": found.slope_mhz_per_gauss[0],
+        "slope_uncertainty_MHz_per_G": sigma[SLOPE],
+        "quadratic_Hz_per_G2": found.quadratic_hz_per_gauss2[0],
+        "quadratic_uncertainty_Hz_per_G2": sigma[QUADRATIC],
+        "moment_muB": np.asarray(found.moment_mu_b[0]),
+    }
+    return Answer(
+        {"atom": level.atom, "level": level.name},
+        Table(columns),
+        used=level_inputs(level),
+        warnings=level_warnings(level, asked.field),
+        uncertainty_excludes=spread.excludes,
+    )
+
+
+QUESTION = Question(
+    name="sublevels",
+    path="/v1/atoms/{atom}/sublevels",
+    asked=SublevelsAsked,
+    answered=SublevelsAnswered,
+    ask=answer_sublevels,
+    summary="Every sublevel of a level in a field",
+    example="/v1/atoms/87Rb/sublevels?level=5s_2S1/2&field=3.2",
+    tag="field",
+)
