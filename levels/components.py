@@ -220,7 +220,8 @@ def _difference(ends: tuple[tuple[Eigen, int], tuple[Eigen, int]], number: Calla
 def components(line: Line, field_gauss: ArrayLike, q: int | None = None) -> Components:
     """Solve every component of a line (or those of one q) at one or many fields."""
     if q is not None and abs(q) > line.rank:
-        raise OutsideValidity("polarisation", q, f"m' - m of an {line.multipole} line, from -{line.rank} to {line.rank}")
+        allowed = f"m' - m of an {line.multipole} line, from -{line.rank} to {line.rank}"
+        raise OutsideValidity("polarisation", q, allowed)
     fields, pairs = as_fields(field_gauss), pairs_of(line, q)
     if not pairs:
         raise UnknownName("component", f"q = {q}", hint=f"{line.name} has no pair of sublevels with this m' - m")
