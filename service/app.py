@@ -14,6 +14,7 @@ from starlette.types import ASGIApp, Receive, Scope, Send
 
 from service import VERSION
 from service.asking import QuestionRoute
+from service.bench import bench_routes
 from service.cache import AnswerCache
 from service.context import build_context
 from service.docs import docs_routes
@@ -77,6 +78,7 @@ def build_app(settings: Settings | None = None) -> Application:
     api.router.routes.extend(ROUTES)
     document: dict[str, Any] = build_openapi(api, QUESTIONS)
     api.router.routes.extend(docs_routes(document, QUESTIONS))
+    api.router.routes.extend(bench_routes())
     api.openapi = lambda: document  # type: ignore[method-assign]
     front = Front(api, settings, metrics)
     layers = CORSMiddleware(

@@ -11,7 +11,7 @@ from typing import Any
 
 import orjson
 from starlette.requests import Request
-from starlette.responses import RedirectResponse, Response
+from starlette.responses import Response
 from starlette.routing import Route
 
 from service.formats import etag, etag_matches
@@ -26,7 +26,7 @@ PAGE_HEADERS = {"Content-Security-Policy": PAGE_POLICY.decode(), "Cache-Control"
 
 def docs_routes(document: Mapping[str, Any], questions: Iterable[Question]) -> list[Route]:
     """The routes of the documentation: ready bytes each."""
-    problems = {row.name: _ready(problem_page(row), HTML) for row in TYPES.values()}
+    problems = {row.name: ready(problem_page(row), HTML) for row in TYPES.values()}
 
     async def problem(request: Request) -> Response:
         name = request.path_params["name"]
@@ -35,9 +35,6 @@ def docs_routes(document: Mapping[str, Any], questions: Iterable[Question]) -> l
             raise Problem("unknown-path", detail, given=name, nearest=nearest_names(name, problems))
         return await problems[name](request)
 
-    async def home(request: Request) -> Response:
-        return RedirectResponse("/docs", 307)
-
     pages = {
         "/docs": (docs_page(document, list(questions)), HTML),
         "/problems": (problems_page(), HTML),
@@ -45,11 +42,11 @@ def docs_routes(document: Mapping[str, Any], questions: Iterable[Question]) -> l
         "/docs/docs.css": ((FILES / "docs.css").read_text(), "text/css; charset=utf-8"),
         "/docs/docs.js": ((FILES / "docs.js").read_text(), "text/javascript; charset=utf-8"),
     }
-    routes = [Route(path, _ready(text, kind), name=path) for path, (text, kind) in pages.items()]
-    return [*routes, Route("/problems/{name}", problem, name="problem"), Route("/", home, name="home")]
+    routes = [Route(path, ready(text, kind), name=path) for path, (text, kind) in pages.items()]
+    return [*routes, Route("/problems/{name}", problem, name="problem")]
 
 
-def _ready(text: str, media_type: str) -> Callable[[Request], Awaitable[Response]]:
+def ready(text: str, media_type: str) -> Callable[[Request], Awaitable[Response]]:
     body, tag = text.encode(), etag(text).decode()
     headers = {**PAGE_HEADERS, "ETag": tag, "Content-Type": media_type}
 
@@ -65,7 +62,7 @@ def _page(title: str, body: str) -> str:
     return (
         '<!doctype html>\n<html lang="en">\n<head>\n<meta charset="utf-8">\n'
         '<meta name="viewport" content="width=device-width, initial-scale=1">\n'
-        f'<title>{escape(title)}</title>\n<link rel="stylesheet" href="/docs/docs.css">\n'
+        f'<title>{escape(title)}</title>\n<link rel="icon" href="/page/mark.svg" type="image/svg+xml"><link rel="stylesheet" href="/docs/docs.css">\n'
         '<script type="module" src="/docs/docs.js"></script>\n</head>\n'
         f"<body>\n<main>\n{body}\n</main>\n</body>\n</html>\n"
     )
