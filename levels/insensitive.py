@@ -72,18 +72,22 @@ def field_grid(constants: Constants, max_field_gauss: float) -> Array:
     return grid
 
 
-def roots(numbers: Numbers, grid: Array, values: Array, derivatives: Array) -> tuple[NDArray[np.int64], Array]:
+def roots(
+    numbers: Numbers, grid: Array, values: Array, derivatives: Array, rounding: float = 0.0
+) -> tuple[NDArray[np.int64], Array]:
     """Find every root of every column, including two that share one grid interval.
 
     `values` and `derivatives` have shape (n, c) on the grid; `numbers(column, field)` evaluates both at one field per
-    column. Returns the columns and the fields of the roots.
+    column. A turning point no further from zero than `rounding` is a root. Returns the columns and the fields of the
+    roots.
     """
     low, column = _sign_changes(derivatives)
     same_sign = np.sign(values[low, column]) == np.sign(values[low + 1, column])
     low, column = low[same_sign], column[same_sign]
     turning = _polish(lambda c, b: numbers(c, b)[1], column, grid[low], grid[low + 1], derivatives[low, column])
     at_turning = numbers(column, turning)[0] if column.size else np.empty(0)
-    hidden = np.sign(at_turning) * np.sign(values[low, column]) < 0
+    touching = np.abs(at_turning) <= rounding
+    hidden = ~touching & (np.sign(at_turning) * np.sign(values[low, column]) < 0)
     first, which = _sign_changes(values)
     columns = np.concatenate([which, column[hidden], column[hidden]])
     lows = np.concatenate([grid[first], grid[low[hidden]], turning[hidden]])
@@ -91,7 +95,10 @@ def roots(numbers: Numbers, grid: Array, values: Array, derivatives: Array) -> t
     at_low = np.concatenate([values[first, which], values[low[hidden], column[hidden]], at_turning[hidden]])
     found = _polish(lambda c, b: numbers(c, b)[0], columns, lows, highs, at_low)
     zero_rows, zero_columns = np.nonzero(values == 0)
-    return np.concatenate([columns, zero_columns]), np.concatenate([found, grid[zero_rows]])
+    return (
+        np.concatenate([columns, column[touching], zero_columns]),
+        np.concatenate([found, turning[touching], grid[zero_rows]]),
+    )
 
 
 def _sign_changes(values: Array) -> tuple[NDArray[np.int64], NDArray[np.int64]]:
@@ -246,7 +253,9 @@ def fields_from_splitting(
         return energy - splitting_mhz, _slopes(below, above, [(low, up)] * field.size, field)[0]
 
     values, derivatives = numbers(np.zeros(grid.size, dtype=np.int64), grid)
-    _, fields = roots(numbers, grid, values[:, None], derivatives[:, None])
+    rounding = 8 * np.finfo(float).eps * (abs(splitting_mhz) + float(np.abs(values).max()))
+    values[0] *= abs(values[0]) > rounding
+    _, fields = roots(numbers, grid, values[:, None], derivatives[:, None], rounding)
     return [
         _field_found(difference(lower, low, upper, up, float(b)), float(b), splitting_uncertainty_mhz)
         for b in sorted(fields)
