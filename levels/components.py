@@ -70,9 +70,10 @@ class Component:
     def frequency_uncertainty_mhz(self) -> float | None:
         """Standard uncertainty of the frequency: that of the centroid and that of the offset in quadrature."""
         centroid = self.line.centroid
-        if centroid is None or centroid.uncertainty is None:
+        offset = float(self.spread.uncertainty[ENERGY, 0, 0])
+        if centroid is None or centroid.uncertainty is None or np.isnan(offset):
             return None
-        return float(np.hypot(centroid.uncertainty, self.spread.uncertainty[ENERGY, 0, 0]))
+        return float(np.hypot(centroid.uncertainty, offset))
 
     @property
     def frequency_mhz(self) -> float | None:

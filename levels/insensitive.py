@@ -14,7 +14,7 @@ from numpy.typing import NDArray
 
 from levels.errors import OutsideValidity
 from levels.records import Level
-from levels.sensitivity import Spread, add_terms, movement, spread, terms_of
+from levels.sensitivity import ENERGY, SLOPE, Spread, add_terms, movement, spread, terms_of
 from levels.sublevels import (
     LARGEST_FIELD_GAUSS,
     Constants,
@@ -52,7 +52,7 @@ class Insensitive:
 
 @dataclass(frozen=True, slots=True, eq=False)
 class FieldFound:
-    """A field that gives a measured splitting, with its standard uncertainty (None at a turning point)."""
+    """A field that gives a measured splitting, with its standard uncertainty (None at a turning point, or unknown)."""
 
     field_gauss: float
     uncertainty_gauss: float | None
@@ -221,7 +221,7 @@ def _insensitive(lower: Level, upper: Level, labels: tuple[Label, Label], field_
         at = difference(lower, low, upper, up, field_gauss)
     quadratic = at.quadratic_hz_per_gauss2
     # The root moves by ds/(2q) when the slope moves by ds.
-    moved = float(at.spread.uncertainty[1, 0, 0]) / (2e-6 * abs(quadratic)) if quadratic and field_gauss else 0.0
+    moved = float(at.spread.uncertainty[SLOPE, 0, 0]) / (2e-6 * abs(quadratic)) if quadratic and field_gauss else 0.0
     return Insensitive(low, up, field_gauss, moved, at.difference_mhz, quadratic, at.spread)
 
 
@@ -270,7 +270,8 @@ def _energies(constants: Constants, label: Label, field: Array) -> Array:
 
 def _field_found(at: Difference, field_gauss: float, splitting_uncertainty_mhz: float) -> FieldFound:
     slope = at.slope_mhz_per_gauss
-    spread_mhz = float(np.hypot(splitting_uncertainty_mhz, at.spread.uncertainty[0, 0, 0]))
+    spread_mhz = float(np.hypot(splitting_uncertainty_mhz, at.spread.uncertainty[ENERGY, 0, 0]))
     # Where the curvature over one uncertainty outweighs the slope, the first-order formula says nothing.
-    first_order = abs(slope) > 1e-12 and abs(at.quadratic_hz_per_gauss2) * 1e-6 * spread_mhz < slope**2
+    known = not np.isnan(spread_mhz)
+    first_order = known and abs(slope) > 1e-12 and abs(at.quadratic_hz_per_gauss2) * 1e-6 * spread_mhz < slope**2
     return FieldFound(field_gauss, spread_mhz / abs(slope) if first_order else None, slope, at.spread.excludes)

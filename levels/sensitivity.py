@@ -14,6 +14,11 @@ perturbation theory in the eigenbasis gives (R_kl = 1/(E_k - E_l), zero for k = 
 Landau, Lifshitz, Quantum Mechanics (1977), section 38. The shift from zero field moves as E does, less the zero-field
 hyperfine weights. Constants are taken as independent unless they are the same published value (g_I of one isotope),
 which enters once.
+
+Some constants have no stated uncertainty (a Lande factor by formula, a value printed without one). Nothing is guessed
+for them: they are named, and where a change by `UNSTATED_SHARE` of its size would move a number by more than the rest
+is uncertain, that number has no uncertainty (NaN). Measured g_J depart from the coupling formulas by about that share. The
+second-order mixing of `multiplet` is treated alike, at `MIXING_SHARE`.
 """
 
 from collections.abc import Hashable, Mapping, Sequence
@@ -30,15 +35,18 @@ from levels.sublevels import HZ_PER_MHZ, Eigen
 
 Array = NDArray[np.float64]
 NAMES = ("A", "B", "C", "g_J", "g_I")
+MIXING = len(NAMES)  # the row after the constants: the second-order mixing, per relative change
 ENERGY, SLOPE, QUADRATIC, SHIFT = range(4)
+UNSTATED_SHARE = 1e-4
+MIXING_SHARE = 1e-2
 CANCELLED = 1e-12  # of a contribution: what is left of two that are equal and opposite, beyond rounding
 
 
 @dataclass(frozen=True, slots=True, eq=False)
 class Movement:
-    """Derivatives of energy, slope, quadratic coefficient and shift to each of NAMES, shape (4, 5, n, k).
+    """Derivatives of energy, slope, quadratic coefficient and shift to each of NAMES and to MIXING, shape (4, 6, n, k).
 
-    In MHz, MHz/G, Hz/G2 and MHz, per MHz of A, B, C and per unit of g_J, g_I.
+    In MHz, MHz/G, Hz/G2 and MHz, per MHz of A, B, C, per unit of g_J, g_I and per relative change of the mixing.
     """
 
     numbers: Array
@@ -52,13 +60,17 @@ def movement(eigen: Eigen, field_gauss: Array, ranks: Sequence[int] | slice = sl
     """Differentiate the chosen ranks of one solved block by A, B, C (in MHz), g_J and g_I."""
     given, chosen = eigen.given, eigen.states[:, :, ranks]
     P_v, W_v = _applied(eigen, chosen, field_gauss)
-    numbers = np.zeros((4, len(NAMES), field_gauss.size, chosen.shape[-1]))
+    everything = np.zeros((4, MIXING + 1, field_gauss.size, chosen.shape[-1]))
+    numbers = everything[:, :MIXING]
     numbers[ENERGY] = numbers[SHIFT] = (chosen * P_v).sum(axis=-2)
     numbers[SHIFT, :3] -= _zero_field_weights(given.block, given.twice_F)[:, None, ranks]
     numbers[SLOPE, 3:] = (chosen * W_v).sum(axis=-2)
     if given.zeeman.size > 1:
         _perturb(numbers, eigen, (P_v, W_v), field_gauss, ranks)
-    return Movement(numbers)
+    if given.square.any():
+        square, field = given.square @ (chosen * chosen), field_gauss[:, None]
+        everything[:, MIXING] = field**2 * square, 2 * field * square, square * HZ_PER_MHZ, field**2 * square
+    return Movement(everything)
 
 
 def _applied(eigen: Eigen, vectors: Array, field_gauss: Array) -> tuple[Array, Array]:
@@ -98,7 +110,8 @@ def _zero_field_weights(part: Block, labels: tuple[int, ...]) -> Array:
     return weights
 
 
-Terms = dict[Hashable, tuple[Quantity, str, Array]]
+Term = tuple[Quantity | None, str, Array]
+Terms = dict[Hashable, Term]
 
 
 def terms_of(level: Level, moved: Movement, sign: float = 1.0) -> Terms:
@@ -113,6 +126,9 @@ def terms_of(level: Level, moved: Movement, sign: float = 1.0) -> Terms:
             key: Hashable = (name, constant) if name == "g_I" else (name, level.name)
             owner = level.atom if name == "g_I" else level.name
             terms[key] = (constant, f"{name}({owner})", sign * moved.numbers[:, at])
+    if np.any(moved.numbers[:, MIXING]):
+        name = f"fine-structure mixing({level.name})"
+        terms["mixing", level.name] = (None, name, sign * moved.numbers[:, MIXING])
     return terms
 
 
@@ -132,17 +148,36 @@ def add_terms(first: Terms, second: Terms) -> Terms:
 
 @dataclass(frozen=True, slots=True, eq=False)
 class Spread:
-    """Standard uncertainties (4, n, k) of energy, slope, quadratic coefficient and shift, and what they leave out."""
+    """Standard uncertainties (4, n, k) of energy, slope, quadratic coefficient and shift, and what they leave out.
+
+    `stated` is the part that stated uncertainties make; `uncertainty` is the same, or NaN where what is left out could
+    weigh more. `excludes` names the constants without a stated uncertainty that move any of the numbers.
+    """
 
     uncertainty: Array
+    stated: Array
     excludes: tuple[str, ...]
 
 
-def spread(terms: Mapping[Hashable, tuple[Quantity, str, Array]]) -> Spread:
-    """Combine contributions in quadrature; constants without a stated uncertainty are named instead."""
-    parts = [numbers * c.uncertainty for c, _, numbers in terms.values() if c.uncertainty is not None]
-    excludes = tuple(name for c, name, _ in terms.values() if c.uncertainty is None)
-    if parts:
-        return Spread(np.sqrt(np.sum(np.square(parts), axis=0)), excludes)
+def spread(terms: Mapping[Hashable, Term]) -> Spread:
+    """Combine stated contributions in quadrature; name the rest, and say where it could outweigh them."""
     shape = next(iter(terms.values()))[2].shape if terms else (4, 1, 1)
-    return Spread(np.zeros(shape), excludes)
+    variance, doubt = np.zeros(shape), np.zeros(shape)
+    for constant, _, numbers in terms.values():
+        if constant is not None and constant.uncertainty is not None:
+            variance += (numbers * constant.uncertainty) ** 2
+        else:
+            doubt = np.maximum(doubt, np.abs(numbers) * _share(constant))
+    stated = np.sqrt(variance)
+    lost = doubt > stated
+    excludes = tuple(
+        name
+        for constant, name, numbers in terms.values()
+        if (constant is None and np.any(np.abs(numbers) * MIXING_SHARE > stated))
+        or (constant is not None and constant.uncertainty is None)
+    )
+    return Spread(np.where(lost, np.nan, stated), stated, excludes)
+
+
+def _share(constant: Quantity | None) -> float:
+    return MIXING_SHARE if constant is None else UNSTATED_SHARE * abs(constant.value)

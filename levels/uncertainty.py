@@ -10,7 +10,7 @@ from numpy.typing import ArrayLike, NDArray
 from levels.blocks import block_ms
 from levels.components import pairs_of
 from levels.records import Level, Line
-from levels.sensitivity import NAMES, Movement, Spread, add_terms, movement, spread, terms_of
+from levels.sensitivity import MIXING, Movement, Spread, add_terms, movement, spread, terms_of
 from levels.sublevels import as_fields, constants_of, labels_of, solve_block
 
 NUMBERS = 4  # energy, slope, quadratic coefficient, shift
@@ -20,7 +20,7 @@ def movements(level: Level, field_gauss: ArrayLike) -> Movement:
     """Differentiate every sublevel of a level by its constants, in the order of the table of sublevels."""
     constants, fields = constants_of(level), as_fields(field_gauss)
     order = {label: k for k, label in enumerate(labels_of(constants))}
-    numbers = np.zeros((NUMBERS, len(NAMES), fields.size, len(order)))
+    numbers = np.zeros((NUMBERS, MIXING + 1, fields.size, len(order)))
     for twice_m in block_ms(constants.twice_J, constants.twice_I):
         eigen = solve_block(constants, twice_m, fields)
         numbers[..., [order[F, twice_m] for F in eigen.twice_F]] = movement(eigen, fields).numbers

@@ -294,11 +294,14 @@ def test_a_quadrupole_line_reaches_two_steps_of_m() -> None:
 
 def test_frequency_joins_centroid_and_offset() -> None:
     """The frequency is the centroid plus the offset, its uncertainty both in quadrature; without a centroid, None."""
-    placed = replace(RB87_D2, centroid=quantity(384230484.468, 0.012, "MHz"))
+    lower = replace(RB87_D2.lower, A=quantity(3417.341, 1e-6, "MHz"))
+    placed = replace(RB87_D2, lower=lower, centroid=quantity(384230484.468, 0.012, "MHz"))
     found = component(placed, (4, 4), (6, 6), 0.0)
     assert found.frequency_mhz == pytest.approx(384230484.468 + found.offset_mhz, abs=1e-6)
     offset_part = found.spread.uncertainty[ENERGY, 0, 0]
     assert found.frequency_uncertainty_mhz == pytest.approx(np.hypot(0.012, offset_part))
+    unsure = component(replace(RB87_D2, centroid=placed.centroid), (4, 4), (6, 6), 0.0)
+    assert unsure.frequency_uncertainty_mhz is None  # A of the lower level has none stated
     bare = component(RB87_D2, (4, 4), (6, 6), 0.0)
     assert bare.frequency_mhz is None
     assert bare.frequency_uncertainty_mhz is None

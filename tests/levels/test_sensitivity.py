@@ -13,7 +13,7 @@ from levels.components import component
 from levels.constants import MU_B_MHZ_PER_GAUSS
 from levels.insensitive import difference
 from levels.records import Level
-from levels.sensitivity import ENERGY, NAMES, QUADRATIC, SHIFT, SLOPE, add_terms, movement, spread, terms_of
+from levels.sensitivity import ENERGY, MIXING, NAMES, QUADRATIC, SHIFT, SLOPE, add_terms, movement, spread, terms_of
 from levels.sublevels import HZ_PER_MHZ, constants_of, find_sublevel, solve_block, sublevels
 from tests import full_dimension
 from tests.records_for_tests import RB87_D2, RB87_GROUND, RB87_P3, level, levels, line, quantity, signed
@@ -43,7 +43,7 @@ def check_movement(of: Level, twice_m: int, field: float) -> None:
     The size is that of the largest expected number in the block, or a hundredth of what perturbation theory allows.
     """
     moved = movement(solve_block(constants_of(of), twice_m, np.array([field])), np.array([field])).numbers
-    gap, zeeman = smallest_gap(of, twice_m, field), float(np.abs(full_dimension.zeeman(of)).max())
+    gap, zeeman = smallest_gap(of, twice_m, field), float(np.abs(full_dimension.moving(of, field)).max())
     share = 1e-12 * full_dimension.largest_term(of, field) / gap
     for at, name in enumerate(NAMES):
         expected = numeric(of, twice_m, field, name)
@@ -55,7 +55,7 @@ def check_movement(of: Level, twice_m: int, field: float) -> None:
 
 
 @settings(max_examples=15)
-@given(levels(twice_J=st.integers(1, 5), twice_I=st.integers(1, 5)), signed(0.1, 3e3), st.data())
+@given(levels(st.integers(1, 5), st.integers(1, 5), mixed=True), signed(0.1, 3e3), st.data())
 def test_derivatives_against_forty_digits(of: Level, field: float, data: st.DataObject) -> None:
     """dE, d(slope) and d(quadratic) by A, B, C, g_J and g_I are those of 40-digit differences, any J, I and field."""
     twice_m = data.draw(st.sampled_from(list(block_ms(of.twice_J, of.twice_I))))
@@ -148,11 +148,11 @@ def test_shared_g_I_cancels_on_the_stretched_line() -> None:
     lower, upper = replace(RB87_GROUND, g_I=shared), replace(RB87_P3, g_I=shared)
     alone = [replace(lower, g_J=quantity(2.0)), replace(upper, g_J=quantity(1.3), A=quantity(85.0), B=quantity(12.0))]
     found = component(line(*alone), (4, 4), (6, 6), 100.0)
-    assert found.spread.uncertainty[:3, 0, 0] == pytest.approx([0, 0, 0], abs=1e-18)
+    assert found.spread.stated[:3, 0, 0] == pytest.approx([0, 0, 0], abs=1e-18)
     apart = replace(alone[1], g_I=quantity(-0.000995, 3e-5))  # measured separately in the upper level
     found = component(line(alone[0], apart), (4, 4), (6, 6), 100.0)
     expected = 1.5 * MU_B_MHZ_PER_GAUSS * np.hypot(1e-5, 3e-5)
-    assert found.spread.uncertainty[SLOPE, 0, 0] == pytest.approx(expected, rel=1e-12)
+    assert found.spread.stated[SLOPE, 0, 0] == pytest.approx(expected, rel=1e-12)
 
 
 def test_constants_of_two_levels_add_in_quadrature() -> None:
@@ -173,6 +173,24 @@ def test_constants_without_uncertainty_are_named() -> None:
     assert set(away.spread.excludes) == {"A(5s_2S1/2)", "g_I(87Rb)"}
     at_rest = component(line(level(0, 0), level(2, 0, g_J=1.5, name="b")), (0, 0), (2, 0), 5.0)
     assert at_rest.spread.excludes == ()
+
+
+def test_a_number_that_rests_on_unstated_constants_has_no_uncertainty() -> None:
+    """Where a constant without uncertainty could outweigh the rest, the uncertainty is unknown, not small."""
+    lower = replace(RB87_GROUND, A=quantity(3417.3, 1e-6), g_J=quantity(2.0023, 1e-7), g_I=quantity(-0.001, 1e-9))
+    upper = replace(RB87_P3, A=quantity(84.7, 2e-3), B=quantity(12.5, 4e-3), g_J=quantity(1.334), g_I=lower.g_I)
+    found = component(line(lower, upper), (4, 4), (6, 6), 3.0).spread
+    assert np.isnan(found.uncertainty[SLOPE, 0, 0])  # 1e-4 of g_J moves it a thousand times the stated part
+    assert found.uncertainty[ENERGY, 0, 0] == found.stated[ENERGY, 0, 0]  # A and B weigh more than that here
+    assert found.excludes == ("g_J(5p_2P3/2)",)
+
+
+def test_a_shift_made_by_mixing_alone_has_no_uncertainty() -> None:
+    """The quadratic shift of a 3P0 level rests on LS coupling, so its uncertainty is unknown and the answer says why."""
+    clock = replace(level(0, 0, name="5s.5p_3P0"), term="3P", neighbours=((2, 5.6e6),))
+    found = difference(level(0, 0, name="ground"), (0, 0), clock, (0, 0), 10.0)
+    assert np.isnan(found.spread.uncertainty[SHIFT, 0, 0])
+    assert found.spread.excludes == ("fine-structure mixing(5s.5p_3P0)",)
 
 
 @given(levels(twice_J=st.integers(1, 6), twice_I=st.integers(1, 6)))
@@ -200,7 +218,7 @@ def test_movement_of_chosen_ranks_is_a_part_of_all() -> None:
     fields = np.array([0.0, 5.0, -40.0])
     eigen = solve_block(constants_of(RB87_P3), 0, fields)
     whole, one = movement(eigen, fields).numbers, movement(eigen, fields, [2]).numbers
-    assert one.shape == (4, 5, 3, 1)
+    assert one.shape == (4, MIXING + 1, 3, 1)
     assert one[..., 0] == pytest.approx(whole[..., 2], rel=1e-12, abs=1e-15)
     assert movement(eigen, fields, [2]).minus(movement(eigen, fields, [2])).numbers == pytest.approx(0 * one)
 
@@ -211,7 +229,7 @@ def test_terms_with_the_same_key_add_before_squaring() -> None:
     fields = np.array([10.0])
     eigen = solve_block(constants_of(of), 4, fields)
     terms = terms_of(of, movement(eigen, fields))
-    assert spread(add_terms(terms, terms)).uncertainty == pytest.approx(2 * spread(terms).uncertainty, rel=1e-14)
+    assert spread(add_terms(terms, terms)).stated == pytest.approx(2 * spread(terms).stated, rel=1e-14)
 
 
 def test_sublevel_energies_are_those_that_movement_differentiates() -> None:
