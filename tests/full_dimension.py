@@ -14,7 +14,7 @@ import numpy as np
 from numpy.typing import NDArray
 from pywigxjpf import pywigxjpf
 
-from levels.constants import MU_B_MHZ_PER_GAUSS
+from levels.constants import G_S, MU_B_MHZ_PER_GAUSS
 from levels.records import Level
 
 Array = NDArray[np.float64]
@@ -106,12 +106,51 @@ def zeeman(level: Level) -> Array:
     return MU_B_MHZ_PER_GAUSS * (number(level, "g_J") * ops.J_z + number(level, "g_I") * ops.I_z)
 
 
+@lru_cache(maxsize=256)
+def term_states(twice_L: int, twice_S: int) -> tuple[Array, dict[tuple[int, int], Array]]:
+    """S_z in the product space of L and S, and the coupled states |J M> there by (2J, 2M), by diagonalisation."""
+    ones = np.eye(twice_L + 1), np.eye(twice_S + 1)
+    orbital = [np.kron(part, ones[1]) for part in spin(twice_L)]
+    spins = [np.kron(ones[0], part) for part in spin(twice_S)]
+    scalar = orbital[0] @ spins[0] + (orbital[1] @ spins[2] + orbital[2] @ spins[1]) / 2
+    L, S = twice_L / 2, twice_S / 2
+    values, vectors = np.linalg.eigh(2 * scalar + 1e-3 * (orbital[0] + spins[0]))
+    states = {}
+    for twice_J in range(abs(twice_L - twice_S), twice_L + twice_S + 1, 2):
+        for twice_M in range(-twice_J, twice_J + 1, 2):
+            J = twice_J / 2
+            expected = J * (J + 1) - L * (L + 1) - S * (S + 1) + 1e-3 * twice_M / 2
+            states[twice_J, twice_M] = vectors[:, int(np.argmin(np.abs(values - expected)))]
+    return spins[0], states
+
+
+def square(level: Level) -> Array:
+    """The diagonal of half of d2H/dB2 in MHz/G2: second-order Zeeman mixing with the neighbours of an LS term."""
+    per_mJ = dict.fromkeys(range(-level.twice_J, level.twice_J + 1, 2), 0.0)
+    if level.neighbours:
+        letter = "SPDFGHIKLMNOQ".index(level.term.lstrip("0123456789")[0])
+        S_z, states = term_states(2 * letter, int(level.term.rstrip("SPDFGHIKLMNOQ")) - 1)
+        for twice_other, gap_mhz in level.neighbours:
+            for M in per_mJ:
+                if abs(M) <= twice_other:
+                    element = states[twice_other, M] @ S_z @ states[level.twice_J, M]
+                    per_mJ[M] -= ((G_S - 1) * MU_B_MHZ_PER_GAUSS * element) ** 2 / gap_mhz
+    ops = operators(level.twice_J, level.twice_I)
+    return np.array([per_mJ[int(mJ)] for mJ in np.rint(2 * np.diag(ops.J_z))])
+
+
+def moving(level: Level, field_gauss: float) -> Array:
+    """dH/dB in MHz/G at a field."""
+    return zeeman(level) + 2 * field_gauss * np.diag(square(level))
+
+
 def largest_term(level: Level, field_gauss: float) -> float:
     """The size in MHz of the largest term of the Hamiltonian, which rounding errors scale with."""
     ops = operators(level.twice_J, level.twice_I)
     parts = zip("ABC", (ops.dipole, ops.quadrupole, ops.octupole), strict=True)
     terms = [abs(number(level, name)) * np.abs(part).max() for name, part in parts]
-    return float(max(*terms, abs(field_gauss) * np.abs(zeeman(level)).max(), 1e-9))
+    terms += [abs(field_gauss) * np.abs(zeeman(level)).max(), field_gauss**2 * np.abs(square(level)).max(), 1e-9]
+    return float(max(terms))
 
 
 @dataclass(frozen=True)
@@ -128,12 +167,12 @@ class Solved:
 def solve(level: Level, field_gauss: float) -> Solved:
     """Diagonalise a level at one field in one piece."""
     ops = operators(level.twice_J, level.twice_I)
-    hamiltonian = still(level) + field_gauss * zeeman(level)
+    hamiltonian = still(level) + field_gauss * zeeman(level) + field_gauss**2 * np.diag(square(level))
     total = np.diag(ops.J_z + ops.I_z)
     apart = 4 * max(float(np.abs(np.linalg.eigvalsh(hamiltonian)).max()), 1e-9)
     energy, states = np.linalg.eigh(hamiltonian + apart * np.diag(total))
     m = np.einsum("ik,i,ik->k", states, total, states)
-    slope = np.einsum("ik,ij,jk->k", states, zeeman(level), states)
+    slope = np.einsum("ik,ij,jk->k", states, moving(level, field_gauss), states)
     twice_m = np.rint(2 * m).astype(np.int64)
     energy = energy - apart * twice_m / 2
     steps = np.diff(energy)[np.diff(twice_m) == 0]
@@ -160,48 +199,54 @@ def multipole(twice_J: int, twice_J_up: int, twice_I: int, rank: int, q: int) ->
     return np.kron(electronic, np.eye(twice_I + 1))
 
 
-Precise = list[tuple[Any, Any, Any]]
-
-
-def _cut(level: Level, twice_m: int, moved: dict[str, Any]) -> tuple[Any, Any]:
-    """The zero-field and the Zeeman matrix of one m, cut out of the full matrices, in mpmath."""
-    ops = operators(level.twice_J, level.twice_I)
-    rows = np.nonzero(np.rint(2 * np.diag(ops.J_z + ops.I_z)) == twice_m)[0]
-    constants = [mpmath.mpf(number(level, key)) + moved.get(key, 0) for key in ("A", "B", "C", "g_J", "g_I")]
-    parts = [mpmath.matrix(part[np.ix_(rows, rows)].tolist()) for part in vars(ops).values()]
-    parts = [(part + part.T) / 2 for part in parts]
-    tilt = mpmath.mpf(MU_B_MHZ_PER_GAUSS) * (constants[3] * parts[3] + constants[4] * parts[4])
-    return constants[0] * parts[0] + constants[1] * parts[1] + constants[2] * parts[2], tilt
-
-
-def differences(level: Level, twice_m: int, field_gauss: float, step_gauss: float) -> tuple[list[float], list[float]]:
-    """First and half the second derivative of the energies of one m by rank, by central differences at 40 digits.
+class Precise:
+    """One m of a level cut out of the full matrices, in mpmath; `moved` adds to constants by name.
 
     The numbers in the full matrices are exact to double rounding, which moves every answer by some 1e-16.
     """
+
+    def __init__(self, level: Level, twice_m: int, moved: dict[str, Any] | None = None) -> None:
+        ops = operators(level.twice_J, level.twice_I)
+        rows = np.nonzero(np.rint(2 * np.diag(ops.J_z + ops.I_z)) == twice_m)[0]
+        moved = moved or {}
+        constants = [mpmath.mpf(number(level, key)) + moved.get(key, 0) for key in ("A", "B", "C", "g_J", "g_I")]
+        parts = [mpmath.matrix(part[np.ix_(rows, rows)].tolist()) for part in vars(ops).values()]
+        parts = [(part + part.T) / 2 for part in parts]
+        self.still = constants[0] * parts[0] + constants[1] * parts[1] + constants[2] * parts[2]
+        self.tilt = mpmath.mpf(MU_B_MHZ_PER_GAUSS) * (constants[3] * parts[3] + constants[4] * parts[4])
+        self.square = mpmath.diag(square(level)[rows].tolist())
+
+    def hamiltonian(self, field: Any) -> Any:
+        return self.still + field * self.tilt + field**2 * self.square
+
+
+def differences(level: Level, twice_m: int, field_gauss: float, step_gauss: float) -> tuple[list[float], list[float]]:
+    """First and half the second derivative of the energies of one m by rank, by central differences at 40 digits."""
     with mpmath.workdps(40):
-        still_, tilt = _cut(level, twice_m, {})
-        step = mpmath.mpf(step_gauss)
+        cut, field, step = Precise(level, twice_m), mpmath.mpf(field_gauss), mpmath.mpf(step_gauss)
         low, at, high = (
-            sorted(mpmath.eigsy(still_ + (mpmath.mpf(field_gauss) + k * step) * tilt, eigvals_only=True))
-            for k in (-1, 0, 1)
+            sorted(mpmath.eigsy(cut.hamiltonian(field + k * step), eigvals_only=True)) for k in (-1, 0, 1)
         )
         slope = [float((c - a) / (2 * step)) for a, c in zip(low, high, strict=True)]
         half = [float((a - 2 * b + c) / (2 * step**2)) for a, b, c in zip(low, at, high, strict=True)]
         return slope, half
 
 
-def precise(level: Level, twice_m: int, field_gauss: float, moved: dict[str, Any] | None = None) -> Precise:
-    """Energy, slope and quadratic coefficient (MHz, MHz/G, MHz/G2) of one m by rank, to 40 digits.
-
-    `moved` adds to constants by name, in MHz or Bohr magnetons.
-    """
+def precise(
+    level: Level, twice_m: int, field_gauss: float, moved: dict[str, Any] | None = None
+) -> list[tuple[Any, Any, Any]]:
+    """Energy, slope and quadratic coefficient (MHz, MHz/G, MHz/G2) of one m by rank, to 40 digits."""
     with mpmath.workdps(40):
-        hamiltonian, tilt = _cut(level, twice_m, moved or {})
-        energy, states = mpmath.eigsy(hamiltonian + mpmath.mpf(field_gauss) * tilt)
-        Z = states.T * tilt * states
+        cut, field = Precise(level, twice_m, moved), mpmath.mpf(field_gauss)
+        energy, states = mpmath.eigsy(cut.hamiltonian(field))
+        Z = states.T * (cut.tilt + 2 * field * cut.square) * states
+        D = states.T * cut.square * states
         order = sorted(range(len(energy)), key=lambda k: energy[k])
         return [
-            (energy[k], Z[k, k], mpmath.fsum(Z[k, j] ** 2 / (energy[k] - energy[j]) for j in order if j != k))
+            (
+                energy[k],
+                Z[k, k],
+                D[k, k] + mpmath.fsum(Z[k, j] ** 2 / (energy[k] - energy[j]) for j in order if j != k),
+            )
             for k in order
         ]

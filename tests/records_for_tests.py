@@ -73,9 +73,15 @@ def signed(low: float, high: float) -> st.SearchStrategy[float]:
 
 @st.composite
 def levels(
-    draw: st.DrawFn, twice_J: st.SearchStrategy[int] | None = None, twice_I: st.SearchStrategy[int] | None = None
+    draw: st.DrawFn,
+    twice_J: st.SearchStrategy[int] | None = None,
+    twice_I: st.SearchStrategy[int] | None = None,
+    mixed: bool = False,
 ) -> Level:
-    """Any level with J to 8, I to 9/2: hyperfine of MHz to GHz, either sign, with B and C where they exist."""
+    """Any level with J to 8, I to 9/2: hyperfine of MHz to GHz, either sign, with B and C where they exist.
+
+    `mixed` gives some of them fine-structure neighbours of one LS term, above or below.
+    """
     J = draw(twice_J if twice_J is not None else st.integers(0, 16))
     I = draw(twice_I if twice_I is not None else st.integers(0, 9))
     A = draw(signed(1.0, 5000.0)) if J and I else None
@@ -83,4 +89,19 @@ def levels(
     C = draw(signed(1e-5, 1e-3)) * abs(A) if A and J >= 3 and I >= 3 else None
     g_J = draw(signed(0.1, 2.5)) if J else None
     g_I = draw(signed(1e-5, 3e-3)) if I else None
-    return level(J, I, A, B, C, g_J, g_I)
+    more = draw(terms(J)) if mixed else {}
+    return level(J, I, A, B, C, g_J, g_I, **more)
+
+
+@st.composite
+def terms(draw: st.DrawFn, twice_J: int) -> dict[str, Any]:
+    """An LS term that holds J, and none, one or both of its neighbours 1e4 to 1e7 MHz away."""
+    S = draw(st.integers(0, 4).map(lambda s: 2 * s + twice_J % 2))
+    Ls = [L for L in range(13) if abs(2 * L - S) <= twice_J <= 2 * L + S]
+    if not Ls:
+        return {}
+    L = draw(st.sampled_from(Ls))
+    exist = [J for J in (twice_J - 2, twice_J + 2) if abs(2 * L - S) <= J <= 2 * L + S]
+    some = draw(st.lists(st.sampled_from(exist), unique=True)) if exist else []
+    neighbours = tuple((J, draw(signed(1e4, 1e7))) for J in sorted(some))
+    return {"term": f"{S + 1}{'SPDFGHIKLMNOQ'[L]}", "neighbours": neighbours}

@@ -43,7 +43,7 @@ def smallest_gap(of: Level) -> float:
     return float(np.diff(energies).min()) if energies.size > 1 else np.inf
 
 
-@given(levels(), fields)
+@given(levels(mixed=True), fields)
 def test_energies_agree_with_full_dimension(of: Level, field: float) -> None:
     """Every energy of any level at any field is that of a plain eigh, to 1e-11 of the largest term."""
     expected, actual = full_dimension.solve(of, field), sublevels(of, field)
@@ -53,12 +53,12 @@ def test_energies_agree_with_full_dimension(of: Level, field: float) -> None:
     assert np.abs(actual.energy_mhz[0][order] - expected.energy_mhz).max() <= 1e-11 * scale
 
 
-@given(levels(), fields)
+@given(levels(mixed=True), fields)
 def test_slopes_agree_with_full_dimension(of: Level, field: float) -> None:
     """Every slope is the expectation of dH/dB in the full-dimension eigenvectors, to rounding over the gap."""
     expected, actual = full_dimension.solve(of, field), sublevels(of, field)
     order = by_m_and_energy(actual)
-    zeeman = max(np.abs(full_dimension.zeeman(of)).max(), 1e-12)
+    zeeman = max(np.abs(full_dimension.moving(of, field)).max(), 1e-12)
     blur = 1e-12 + 1e3 * EPS * full_dimension.largest_term(of, field) / expected.gap_mhz
     assume(blur < 1e-3)
     assert np.abs(actual.slope_mhz_per_gauss[0][order] - expected.slope_mhz_per_gauss).max() <= blur * zeeman
@@ -83,7 +83,7 @@ def test_trace_does_not_move(of: Level, field: float) -> None:
     assert abs(solved.quadratic_hz_per_gauss2.sum()) <= 1e-9 * max(size, 1e-9)
 
 
-@given(levels(), fields)
+@given(levels(mixed=True), fields)
 def test_reversing_field_and_m_changes_nothing(of: Level, field: float) -> None:
     """E(F, m, B) = E(F, -m, -B), with the slope turned and the quadratic coefficient kept."""
     one, two = sublevels(of, field), sublevels(of, -field)
@@ -92,7 +92,7 @@ def test_reversing_field_and_m_changes_nothing(of: Level, field: float) -> None:
     scale = full_dimension.largest_term(of, field)
     assert one.energy_mhz[0] == pytest.approx(two.energy_mhz[0][mirror], abs=1e-12 * scale)
     blur = 1e-12 + 1e3 * EPS * scale / full_dimension.solve(of, field).gap_mhz
-    zeeman = np.abs(full_dimension.zeeman(of)).max()
+    zeeman = np.abs(full_dimension.moving(of, field)).max()
     assert one.slope_mhz_per_gauss[0] == pytest.approx(-two.slope_mhz_per_gauss[0][mirror], abs=blur * zeeman + 1e-15)
 
 
@@ -166,7 +166,7 @@ def test_breit_rabi(of: Level, field: float) -> None:
 
 
 @settings(max_examples=8)
-@given(levels(twice_J=st.integers(2, 7), twice_I=st.integers(1, 5)), signed(1.0, 3e3), st.data())
+@given(levels(st.integers(2, 7), st.integers(1, 5), mixed=True), signed(1.0, 3e3), st.data())
 def test_slopes_and_quadratics_against_forty_digits(of: Level, field: float, data: st.DataObject) -> None:
     """Slope and quadratic coefficient are the first and half the second derivative, by differences at 40 digits.
 
@@ -179,7 +179,7 @@ def test_slopes_and_quadratics_against_forty_digits(of: Level, field: float, dat
     gap = float(np.diff(eigen.energy_mhz[0]).min()) if eigen.block.size > 1 else np.inf
     scale = full_dimension.largest_term(of, field)
     assume(scale / gap < 1e7)
-    zeeman = float(np.abs(full_dimension.zeeman(of)).max())
+    zeeman = float(np.abs(full_dimension.moving(of, field)).max())
     blur = 100 * EPS * scale / gap + 1e-12
     assert eigen.slope_mhz_per_gauss()[0] == pytest.approx(slope, abs=blur * zeeman)
     assert eigen.quadratic_mhz_per_gauss2()[0] == pytest.approx(quadratic, abs=blur * zeeman**2 / gap + 1e-18)
