@@ -160,7 +160,7 @@ def _interval(level: Level, twice_F: int, twice_F_up: int) -> tuple[float, float
 
 
 def branching_sum(species: Species) -> Broken:
-    """The branching fractions of one upper level are positive and sum to at most one."""
+    """The branching fractions of one upper level sum to at most one."""
     for name in species.data.levels:
         published = [
             line.branching.quantity()
@@ -168,8 +168,6 @@ def branching_sum(species: Species) -> Broken:
             if line.upper == name and line.branching is not None
         ]
         values = [in_unit(item, "1") for item in published]
-        if any(not 0 < item.value <= 1 for item in values):
-            yield f"levels.{name}.branching", "a branching fraction is not between 0 and 1"
         total = sum(item.value for item in values)
         spread = math.hypot(*(item.uncertainty or 0.0 for item in values)) if values else 0.0
         if total > 1 + 1e-3 + SIGMAS * spread:

@@ -126,14 +126,11 @@ def find_line(atom: Atom, name: str) -> Line:
     A wavelength fits a line that it names, or one whose vacuum wavelength it gives within its last digit.
     """
     wanted = parse_line(name)
-    found: list[Line] = []
-    if wanted.wavelength:
-        found = [line for line in atom.lines if line.name == wanted.wavelength] or _of_wavelength(
-            atom, wanted.wavelength
-        )
-    elif wanted.alias:
-        alias = wanted.alias.casefold()
-        found = [line for line in atom.lines if alias in (other.casefold() for other in line.aliases)]
+    given = (wanted.wavelength or wanted.alias).casefold()
+    found = [line for line in atom.lines if line.name == given]
+    found = found or [line for line in atom.lines if given in (alias.casefold() for alias in line.aliases)]
+    if not found and wanted.wavelength:
+        found = _of_wavelength(atom, wanted.wavelength)
     if not found and wanted.levels:
         ends = {find_level(atom, end).name for end in wanted.levels}
         found = [line for line in atom.lines if {line.lower.name, line.upper.name} == ends]

@@ -20,7 +20,7 @@ from levels.notation import (
     parse_level,
     term_quantum_numbers,
 )
-from levels.quantity import Quantity, read
+from levels.quantity import Quantity, in_unit, read
 
 Evidence = Literal["checked", "recalled", "computed"]
 
@@ -41,8 +41,15 @@ def _names(reader: Any) -> AfterValidator:
 HalfText = Annotated[str, _names(parse_half)]
 LevelText = Annotated[str, _names(parse_level)]
 FeatureText = Annotated[str, _names(lambda text: text in ("centroid", "average") or parse_feature(text))]
-# TOML keys are text; digits only, so that "040" or "-1" is no isotope
-MassNumber = Annotated[int, BeforeValidator(lambda key: int(key) if re.fullmatch("[1-9][0-9]{0,2}", str(key)) else key)]
+
+
+def _mass_number(key: object) -> int:
+    if not re.fullmatch("[1-9][0-9]{0,2}", str(key)):  # TOML keys are text: "040" and "4e1" are no isotopes
+        raise ValueError("a mass number such as 87")
+    return int(str(key))
+
+
+MassNumber = Annotated[int, BeforeValidator(_mass_number)]
 WhoseValue = MassNumber | Literal["natural"]
 
 
@@ -56,6 +63,7 @@ class Value(Table):
     """A published number: digits and unit as published, where from, and how far it was compared."""
 
     dimensions: ClassVar[tuple[str, ...]] = ("number",)
+    positive: ClassVar[bool] = False
 
     value: str
     source: str = ""
@@ -72,9 +80,11 @@ class Value(Table):
         if self.evidence != "computed" and not self.source:
             raise ValueError(f'evidence = "{self.evidence}" needs source = "<reference key>"')
         try:
-            self.quantity()
+            quantity = self.quantity()
         except OutsideValidity as error:
             raise ValueError(str(error)) from None
+        if self.positive and not quantity.value > 0:
+            raise ValueError(f"{self.value}: must be above zero")
         return self
 
     def quantity(self) -> Quantity:
@@ -96,16 +106,42 @@ class Frequency(Value):
     dimensions = ("frequency",)
 
 
+class Width(Frequency):
+    """A full natural width Gamma/2pi."""
+
+    positive = True
+
+
+class Fraction(Value):
+    """A fraction of a whole: an abundance or a branching."""
+
+    positive = True
+
+    @model_validator(mode="after")
+    def _at_most_one(self) -> Self:
+        if in_unit(self.quantity(), "1").value > 1:
+            raise ValueError(f"{self.value}: is more than the whole")
+        return self
+
+
+class Strength(Value):
+    """An absorption oscillator strength."""
+
+    positive = True
+
+
 class Time(Value):
     """A lifetime or half-life."""
 
     dimensions = ("time",)
+    positive = True
 
 
 class Mass(Value):
     """The mass of the neutral atom."""
 
     dimensions = ("mass",)
+    positive = True
 
 
 class Moment(Value):
@@ -124,6 +160,7 @@ class Rate(Value):
     """A partial decay rate."""
 
     dimensions = ("rate",)
+    positive = True
 
 
 class Dipole(Value):
@@ -156,6 +193,7 @@ class LineFrequency(Value):
     """A frequency, wavenumber or wavelength of a line: of which isotope and of what it is."""
 
     dimensions = ("frequency", "wavenumber", "length")
+    positive = True
 
     isotope: WhoseValue | None = None
     of: FeatureText = "centroid"
@@ -186,7 +224,7 @@ class IsotopeTable(Table):
 
     spin: HalfText
     mass: Mass | None = None
-    abundance: Value | None = None
+    abundance: Fraction | None = None
     half_life: Time | None = None
     g_I: Value | None = None
     moment: Moment | None = None
@@ -218,7 +256,7 @@ class LevelTable(Table):
     aliases: tuple[str, ...] = ()
     energy: Energy | None = None
     lifetime: Time | None = None
-    width: Frequency | None = None
+    width: Width | None = None
     g_J: Value | None = None
     hyperfine: dict[MassNumber, Hyperfine] = {}
     note: str = ""
@@ -248,8 +286,8 @@ class LineTable(Table):
     photons: Literal[1, 2] = 1
     induced: str = ""
     einstein_A: Rate | None = None
-    branching: Value | None = None
-    oscillator_strength: Value | None = None
+    branching: Fraction | None = None
+    oscillator_strength: Strength | None = None
     reduced_dipole: Dipole | None = None
     frequency: tuple[LineFrequency, ...] = ()
     shift: tuple[Shift, ...] = ()
