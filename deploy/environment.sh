@@ -1,5 +1,5 @@
 # Makes the private environments of deploy/serve and deploy/test; sourced by both, never run.
-# An environment is made once and again only when its list of pinned packages or the Python changes.
+# An environment is made once, and again only when its list of pinned packages changes or its Python is gone.
 
 root=$(cd "$(dirname "${BASH_SOURCE[0]}")/.." && pwd)
 
@@ -19,13 +19,6 @@ find_python() {
     fail "Python 3.11, 3.12 or 3.13 is needed and no python3 was found on the PATH"
 }
 
-digest_of() {  # one digest for the pinned packages and the interpreter they are installed for
-    "$1" - "$2" <<'PY'
-import hashlib, pathlib, sys
-print(hashlib.sha256(pathlib.Path(sys.argv[1]).read_bytes() + sys.version.encode() + sys.executable.encode()).hexdigest())
-PY
-}
-
 install_into() {  # environment, pinned packages
     "$1/bin/python" -m pip install --quiet --disable-pip-version-check --no-input --no-deps --require-hashes -r "$2" >>"$1.log" 2>&1 || {
         tail -n 20 "$1.log" >&2
@@ -42,20 +35,19 @@ PY
 }
 
 environment() {  # name, pinned packages: leaves the interpreter's path in $python
-    local python3 place digest
-    python3=$(find_python) || exit 1
+    local python3 place made_from
     place="$root/.venv/$1"
-    digest=$(digest_of "$python3" "$2") || fail "$python3 does not run"
     python="$place/bin/python"
-    [ "$(cat "$place/made-from" 2>/dev/null)" = "$digest" ] && return
+    made_from=$(cksum <"$2") || fail "cannot read $2"
+    [ "$(cat "$place/made-from" 2>/dev/null)" = "$made_from" ] && "$python" -c '' 2>/dev/null && return
+    python3=$(find_python) || exit 1
     printf '%s: making the environment %s (once)\n' "$(basename "$0")" "$place" >&2
-    rm -rf "$place"
-    mkdir -p "$root/.venv" || fail "cannot write to $root"
-    "$python3" -m venv "$place" >"$root/.venv/$1.log" 2>&1 || {
-        cat "$root/.venv/$1.log" >&2
+    mkdir -p "$root/.venv" 2>/dev/null && rm -rf "$place" || fail "cannot write to $root/.venv"
+    "$python3" -m venv "$place" >"$place.log" 2>&1 || {
+        tail -n 20 "$place.log" >&2
         rm -rf "$place"
         fail "$python3 could not make a virtual environment: its venv and ensurepip modules are needed (on Debian and Ubuntu the package python3-venv)"
     }
     install_into "$place" "$2"
-    printf '%s\n' "$digest" >"$place/made-from"
+    printf '%s\n' "$made_from" >"$place/made-from"
 }

@@ -9,12 +9,16 @@ from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import dataclass
 from typing import Any
 
+import numpy as np
+from numpy.typing import NDArray
+
 from levels.quantity import Quantity
 from service.citations import Publication
 from service.formats import Column, NotFinite, Table
 
 NOT_IN_CATALOGUE = "not in the catalogue"
 UNSOURCED = "computed"
+DOUBTED = "inputs without a stated uncertainty (uncertainty_excludes) could outweigh those with one"
 
 
 @dataclass(frozen=True, slots=True)
@@ -47,6 +51,26 @@ def scalar(value: float | None, uncertainty: float | None, unit: str, reason: st
         "unit": unit,
         "reason": reason,
     }
+
+
+def uncertain(value: float, uncertainty: float, stated: float, unit: str) -> dict[str, Any]:
+    """A computed number whose uncertainty is NaN where an input without a stated one could outweigh the rest."""
+    if math.isnan(uncertainty):
+        return scalar(value, None, unit, f"{DOUBTED}; the others make {stated:.2g} {unit}")
+    return scalar(value, uncertainty, unit)
+
+
+def uncertainty_columns(
+    columns: Mapping[str, Sequence[float] | NDArray[Any]],
+) -> tuple[dict[str, Column], dict[str, str]]:
+    """Columns of uncertainties with null for NaN, and the reason for each that has one."""
+    arrays = {name: np.asarray(column, dtype=np.float64) for name, column in columns.items()}
+    doubted = {name: DOUBTED for name, array in arrays.items() if np.isnan(array).any()}
+    written: dict[str, Column] = {
+        name: [None if math.isnan(item) else item for item in array.tolist()] if name in doubted else array
+        for name, array in arrays.items()
+    }
+    return written, doubted
 
 
 def curated(quantity: Quantity | None, unit: str, reason: str = NOT_IN_CATALOGUE) -> dict[str, Any]:

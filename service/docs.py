@@ -62,7 +62,9 @@ def _page(title: str, body: str) -> str:
     return (
         '<!doctype html>\n<html lang="en">\n<head>\n<meta charset="utf-8">\n'
         '<meta name="viewport" content="width=device-width, initial-scale=1">\n'
-        f'<title>{escape(title)}</title>\n<link rel="icon" href="/page/mark.svg" type="image/svg+xml"><link rel="stylesheet" href="/docs/docs.css">\n'
+        f'<title>{escape(title)}</title>\n'
+        '<link rel="icon" href="/page/mark.svg" type="image/svg+xml">\n'
+        '<link rel="stylesheet" href="/docs/docs.css">\n'
         '<script type="module" src="/docs/docs.js"></script>\n</head>\n'
         f"<body>\n<main>\n{body}\n</main>\n</body>\n</html>\n"
     )

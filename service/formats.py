@@ -51,7 +51,7 @@ JSON = REPRESENTATIONS["json"]
 
 @dataclass(frozen=True, slots=True)
 class Table:
-    """Named columns of equal length, in wire order; `missing` says why a column holds nothing but null."""
+    """Named columns of equal length, in wire order; `missing` says why a column holds null."""
 
     columns: Mapping[str, Column]
     missing: Mapping[str, str] = field(default_factory=dict)

@@ -62,7 +62,7 @@ class Source(Shape):
 
 
 class Missing(Shape):
-    """A column of null and why it is one."""
+    """A column that holds null and why."""
 
     column: str
     reason: str
@@ -83,7 +83,7 @@ class Answered(Shape):
 class Tabular(Answered):
     """An answer with a table."""
 
-    missing: list[Missing] = Field(description="columns that hold only null, with the reason")
+    missing: list[Missing] = Field(description="columns that hold null, with the reason")
 
 
 Half = Annotated[float, Field(description="integer or half-integer")]

@@ -9,16 +9,24 @@ from pydantic import Field
 from levels.components import Components, components
 from levels.notation import format_polarisation
 from levels.records import Line
-from levels.sensitivity import ENERGY, QUADRATIC, SHIFT, SLOPE
+from levels.sensitivity import ENERGY
 from levels.uncertainty import component_spread
-from service.answers import Answer
+from service.answers import Answer, uncertainty_columns
 from service.context import Context
 from service.formats import Column, Table
 from service.inputs import line_inputs, line_warnings
 from service.parameters import FieldGauss, Name, PolarisationName
 from service.question import Computed, Question
 from service.routes.shift import NO_CENTROID, NO_STRENGTH, NO_UNCERTAINTY
+from service.routes.sublevels import ORDER
 from service.schemas import Labels, MaybeNumbers, Numbers, Shape, Tabular, Texts
+
+UNCERTAINTIES = (
+    "offset_uncertainty_MHz",
+    "shift_uncertainty_MHz",
+    "slope_uncertainty_MHz_per_G",
+    "quadratic_uncertainty_Hz_per_G2",
+)
 
 
 class ComponentsAsked(Computed):
@@ -40,15 +48,15 @@ class ComponentColumns(Shape):
     upper_m: Labels
     polarisation: Texts = Field(description="sigma+, pi, sigma-; q=+2 and the like for multipoles beyond the dipole")
     offset_MHz: Numbers = Field(description="frequency less that of the line's centroid")
-    offset_uncertainty_MHz: Numbers
+    offset_uncertainty_MHz: MaybeNumbers
     frequency_THz: MaybeNumbers
     frequency_uncertainty_THz: MaybeNumbers
     shift_MHz: Numbers = Field(description="offset less that of the same component at zero field")
-    shift_uncertainty_MHz: Numbers
+    shift_uncertainty_MHz: MaybeNumbers
     slope_MHz_per_G: Numbers
-    slope_uncertainty_MHz_per_G: Numbers
+    slope_uncertainty_MHz_per_G: MaybeNumbers
     quadratic_Hz_per_G2: Numbers = Field(description="half the second derivative at this field")
-    quadratic_uncertainty_Hz_per_G2: Numbers
+    quadratic_uncertainty_Hz_per_G2: MaybeNumbers
     strength: MaybeNumbers = Field(description="share in the decays of the upper sublevel to the lower level")
     strength_at_zero_field: Texts = Field(description="the same at zero field, as an exact fraction")
 
@@ -73,7 +81,8 @@ def frequency_columns(line: Line, offset_mhz: Any, sigma_mhz: Any) -> tuple[dict
     frequency: Column = (centroid.value + offset_mhz) * 1e-6
     if centroid.uncertainty is None:
         return {names[0]: frequency, names[1]: nothing}, {names[1]: NO_UNCERTAINTY}
-    return {names[0]: frequency, names[1]: np.hypot(centroid.uncertainty, sigma_mhz) * 1e-6}, {}
+    sigma, doubted = uncertainty_columns({names[1]: np.hypot(centroid.uncertainty, sigma_mhz) * 1e-6})
+    return {names[0]: frequency, **sigma}, doubted
 
 
 def label_columns(found: Components) -> dict[str, Column]:
@@ -96,22 +105,23 @@ def answer_components(context: Context, path: Mapping[str, str], asked: Componen
     line = context.line(path["atom"], asked.line)
     found = components(line, asked.field, asked.polarisation)
     spread = component_spread(line, asked.field, asked.polarisation)
-    sigma, rows = spread.uncertainty[:, 0], len(found.zero_field_strength)
-    frequencies, missing = frequency_columns(line, found.offset_mhz[0], sigma[ENERGY])
+    sigma, doubted = uncertainty_columns(dict(zip(UNCERTAINTIES, spread.uncertainty[ORDER, 0], strict=True)))
+    frequencies, missing = frequency_columns(line, found.offset_mhz[0], spread.uncertainty[ENERGY, 0])
+    missing = {**doubted, **missing}
     if not found.strength_known:
         missing["strength"] = NO_STRENGTH
     columns: dict[str, Column] = {
         **label_columns(found),
         "offset_MHz": found.offset_mhz[0],
-        "offset_uncertainty_MHz": sigma[ENERGY],
+        "offset_uncertainty_MHz": sigma["offset_uncertainty_MHz"],
         **frequencies,
         "shift_MHz": found.shift_mhz[0],
-        "shift_uncertainty_MHz": sigma[SHIFT],
+        "shift_uncertainty_MHz": sigma["shift_uncertainty_MHz"],
         "slope_MHz_per_G": found.slope_mhz_per_gauss[0],
-        "slope_uncertainty_MHz_per_G": sigma[SLOPE],
+        "slope_uncertainty_MHz_per_G": sigma["slope_uncertainty_MHz_per_G"],
         "quadratic_Hz_per_G2": found.quadratic_hz_per_gauss2[0],
-        "quadratic_uncertainty_Hz_per_G2": sigma[QUADRATIC],
-        "strength": found.strength[0] if found.strength_known else [None] * rows,
+        "quadratic_uncertainty_Hz_per_G2": sigma["quadratic_uncertainty_Hz_per_G2"],
+        "strength": found.strength[0] if found.strength_known else [None] * len(found.q),
         "strength_at_zero_field": [str(part) if found.strength_known else "" for part in found.zero_field_strength],
     }
     return Answer(

@@ -6,13 +6,15 @@ from pydantic import Field
 
 from levels.insensitive import FieldFound, difference, fields_from_splitting
 from levels.records import Level
-from service.answers import Answer
+from service.answers import DOUBTED, Answer
 from service.context import Context
 from service.formats import Column, Table
 from service.inputs import level_inputs, level_warnings
 from service.parameters import LargestField, Name, SplittingMhz, SpreadMhz, Sublevel
 from service.question import Computed, Question
 from service.schemas import MaybeNumbers, Numbers, Shape, Tabular
+
+NO_SPREAD = f"at a turning point the splitting tells nothing to first order; elsewhere {DOUBTED}"
 
 
 class FieldAsked(Computed):
@@ -36,7 +38,7 @@ class FieldColumns(Shape):
     """One row for each field that gives the splitting, rising."""
 
     field_G: Numbers
-    field_uncertainty_G: MaybeNumbers = Field(description="null at a turning point: the splitting tells nothing there")
+    field_uncertainty_G: MaybeNumbers = Field(description="null at a turning point and where it is not known")
     slope_MHz_per_G: Numbers = Field(description="how fast the splitting moves there")
 
 
@@ -63,11 +65,15 @@ def field(context: Context, path: Mapping[str, str], asked: FieldAsked) -> Answe
     warnings = [*level_warnings(level, asked.max_field), *level_warnings(upper, asked.max_field)]
     return Answer(
         {"atom": level.atom, "level": level.name, "upper_level": upper.name},
-        Table(_columns(found)),
+        Table(_columns(found), {"field_uncertainty_G": NO_SPREAD} if _unknown(found) else {}),
         used=list(dict([*level_inputs(level), *level_inputs(upper)]).items()),
         warnings=[*dict.fromkeys(warnings), *([] if found else [_nothing(level, upper, asked)])],
         uncertainty_excludes=list(dict.fromkeys(name for one in found for name in one.excludes)),
     )
+
+
+def _unknown(found: list[FieldFound]) -> bool:
+    return any(one.uncertainty_gauss is None for one in found)
 
 
 def _columns(found: list[FieldFound]) -> dict[str, Column]:

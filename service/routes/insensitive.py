@@ -6,13 +6,13 @@ from pydantic import Field
 
 from levels.insensitive import Insensitive, insensitive
 from levels.sensitivity import ENERGY, QUADRATIC
-from service.answers import Answer
+from service.answers import Answer, uncertainty_columns
 from service.context import Context
 from service.formats import Column, Table
 from service.inputs import level_inputs, level_warnings
 from service.parameters import LargestField, Name
 from service.question import Computed, Question
-from service.schemas import Labels, Numbers, Shape, Tabular
+from service.schemas import Labels, MaybeNumbers, Numbers, Shape, Tabular
 
 
 class InsensitiveAsked(Computed):
@@ -32,11 +32,11 @@ class InsensitiveColumns(Shape):
     upper_F: Labels
     upper_m: Labels
     field_G: Numbers
-    field_uncertainty_G: Numbers
+    field_uncertainty_G: MaybeNumbers
     frequency_MHz: Numbers = Field(description="E(upper) - E(lower), between two levels less that of the centroids")
-    frequency_uncertainty_MHz: Numbers
+    frequency_uncertainty_MHz: MaybeNumbers
     quadratic_Hz_per_G2: Numbers = Field(description="coefficient of (B - field)^2")
-    quadratic_uncertainty_Hz_per_G2: Numbers
+    quadratic_uncertainty_Hz_per_G2: MaybeNumbers
 
 
 class InsensitiveAnswered(Tabular):
@@ -59,7 +59,7 @@ def answer_insensitive(context: Context, path: Mapping[str, str], asked: Insensi
     points = insensitive(level, upper, asked.max_field, 2 * asked.max_dm)
     return Answer(
         {"atom": level.atom, "level": level.name, "upper_level": upper.name},
-        Table(_columns(points)),
+        _table(points),
         used=list(dict([*level_inputs(level), *level_inputs(upper)]).items()),
         warnings=list(
             dict.fromkeys((*level_warnings(level, asked.max_field), *level_warnings(upper, asked.max_field)))
@@ -68,19 +68,27 @@ def answer_insensitive(context: Context, path: Mapping[str, str], asked: Insensi
     )
 
 
-def _columns(points: list[Insensitive]) -> dict[str, Column]:
-    return {
+def _table(points: list[Insensitive]) -> Table:
+    sigma, doubted = uncertainty_columns(
+        {
+            "field_uncertainty_G": [point.field_uncertainty_gauss for point in points],
+            "frequency_uncertainty_MHz": [float(point.spread.uncertainty[ENERGY, 0, 0]) for point in points],
+            "quadratic_uncertainty_Hz_per_G2": [float(point.spread.uncertainty[QUADRATIC, 0, 0]) for point in points],
+        }
+    )
+    columns: dict[str, Column] = {
         "lower_F": [point.lower[0] / 2 for point in points],
         "lower_m": [point.lower[1] / 2 for point in points],
         "upper_F": [point.upper[0] / 2 for point in points],
         "upper_m": [point.upper[1] / 2 for point in points],
         "field_G": [point.field_gauss for point in points],
-        "field_uncertainty_G": [point.field_uncertainty_gauss for point in points],
+        "field_uncertainty_G": sigma["field_uncertainty_G"],
         "frequency_MHz": [point.difference_mhz for point in points],
-        "frequency_uncertainty_MHz": [float(point.spread.uncertainty[ENERGY, 0, 0]) for point in points],
+        "frequency_uncertainty_MHz": sigma["frequency_uncertainty_MHz"],
         "quadratic_Hz_per_G2": [point.quadratic_hz_per_gauss2 for point in points],
-        "quadratic_uncertainty_Hz_per_G2": [float(point.spread.uncertainty[QUADRATIC, 0, 0]) for point in points],
+        "quadratic_uncertainty_Hz_per_G2": sigma["quadratic_uncertainty_Hz_per_G2"],
     }
+    return Table(columns, doubted)
 
 
 QUESTION = Question(

@@ -8,7 +8,7 @@ from levels.components import Component, component
 from levels.notation import format_polarisation
 from levels.records import Line
 from levels.sensitivity import ENERGY, QUADRATIC, SHIFT, SLOPE
-from service.answers import Answer, scalar
+from service.answers import DOUBTED, Answer, scalar, uncertain
 from service.context import Context
 from service.inputs import line_inputs, line_warnings
 from service.parameters import FieldGauss, Name, Sublevel
@@ -84,14 +84,14 @@ def labels(line: Line, found: Component) -> dict[str, str | float]:
 
 def numbers(line: Line, found: Component) -> dict[str, object]:
     """What the component does."""
-    spread = found.spread.uncertainty[:, 0, 0].tolist()
+    spread, stated = (array[:, 0, 0].tolist() for array in (found.spread.uncertainty, found.spread.stated))
     known = found.strength_known
     return {
         "frequency": _frequency(found),
-        "offset": scalar(found.offset_mhz, spread[ENERGY], "MHz"),
-        "shift": scalar(found.shift_mhz, spread[SHIFT], "MHz"),
-        "slope": scalar(found.slope_mhz_per_gauss, spread[SLOPE], "MHz/G"),
-        "quadratic": scalar(found.quadratic_hz_per_gauss2, spread[QUADRATIC], "Hz/G2"),
+        "offset": uncertain(found.offset_mhz, spread[ENERGY], stated[ENERGY], "MHz"),
+        "shift": uncertain(found.shift_mhz, spread[SHIFT], stated[SHIFT], "MHz"),
+        "slope": uncertain(found.slope_mhz_per_gauss, spread[SLOPE], stated[SLOPE], "MHz/G"),
+        "quadratic": uncertain(found.quadratic_hz_per_gauss2, spread[QUADRATIC], stated[QUADRATIC], "Hz/G2"),
         "strength": scalar(
             found.strength if known else None, None, "1", "uncertainty not computed" if known else NO_STRENGTH
         ),
@@ -103,7 +103,14 @@ def _frequency(found: Component) -> dict[str, object]:
     frequency, spread = found.frequency_mhz, found.frequency_uncertainty_mhz
     if frequency is None:
         return scalar(None, None, "THz", NO_CENTROID)
-    return scalar(frequency * 1e-6, None if spread is None else spread * 1e-6, "THz", "" if spread else NO_UNCERTAINTY)
+    if spread is None:
+        return scalar(frequency * 1e-6, None, "THz", no_frequency_spread(found.line))
+    return scalar(frequency * 1e-6, spread * 1e-6, "THz")
+
+
+def no_frequency_spread(line: Line) -> str:
+    """Why a frequency has no uncertainty."""
+    return DOUBTED if line.centroid is not None and line.centroid.uncertainty is not None else NO_UNCERTAINTY
 
 
 QUESTION = Question(

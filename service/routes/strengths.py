@@ -1,7 +1,6 @@
 """`strengths`: the hyperfine components of a line at zero field, exactly."""
 
 from collections.abc import Callable, Mapping
-from typing import TypeVar
 
 from pydantic import Field
 
@@ -17,7 +16,7 @@ from service.question import Computed, Question
 from service.routes.shift import NO_STRENGTH
 from service.schemas import Labels, MaybeNumbers, Shape, Tabular, Texts
 
-Found = TypeVar("Found")
+NOT_STATED = "a constant that enters has no stated uncertainty"
 
 
 class StrengthsAsked(Computed):
@@ -90,6 +89,8 @@ def _pair(
     except NotPublished as error:
         missing.update(dict.fromkeys(names, str(error)))
         return {name: [None] * len(found) for name in names}
+    if any(number is not None and number.uncertainty is None for number in numbers):
+        missing[names[1]] = NOT_STATED
     return {
         names[0]: [None if number is None else number.value for number in numbers],
         names[1]: [None if number is None else number.uncertainty for number in numbers],

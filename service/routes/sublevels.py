@@ -8,13 +8,21 @@ from pydantic import Field
 from levels.sensitivity import ENERGY, QUADRATIC, SHIFT, SLOPE
 from levels.sublevels import Sublevels, sublevels
 from levels.uncertainty import sublevel_spread
-from service.answers import Answer
+from service.answers import Answer, uncertainty_columns
 from service.context import Context
 from service.formats import Column, Table
 from service.inputs import level_inputs, level_warnings
 from service.parameters import FieldGauss, Name
 from service.question import Computed, Question
-from service.schemas import Labels, Numbers, Shape, Tabular
+from service.schemas import Labels, MaybeNumbers, Numbers, Shape, Tabular
+
+UNCERTAINTIES = (
+    "energy_uncertainty_MHz",
+    "shift_uncertainty_MHz",
+    "slope_uncertainty_MHz_per_G",
+    "quadratic_uncertainty_Hz_per_G2",
+)
+ORDER = [ENERGY, SHIFT, SLOPE, QUADRATIC]
 
 
 class SublevelsAsked(Computed):
@@ -32,13 +40,13 @@ class SublevelColumns(Shape):
     m_J: Labels = Field(description="high-field label")
     m_I: Labels = Field(description="high-field label")
     energy_MHz: Numbers = Field(description="from the level's hyperfine centroid")
-    energy_uncertainty_MHz: Numbers
+    energy_uncertainty_MHz: MaybeNumbers
     shift_MHz: Numbers = Field(description="from the same sublevel at zero field")
-    shift_uncertainty_MHz: Numbers
+    shift_uncertainty_MHz: MaybeNumbers
     slope_MHz_per_G: Numbers
-    slope_uncertainty_MHz_per_G: Numbers
+    slope_uncertainty_MHz_per_G: MaybeNumbers
     quadratic_Hz_per_G2: Numbers = Field(description="half the second derivative at this field")
-    quadratic_uncertainty_Hz_per_G2: Numbers
+    quadratic_uncertainty_Hz_per_G2: MaybeNumbers
     moment_muB: Numbers = Field(description="magnetic moment along z: less the slope, in Bohr magnetons")
 
 
@@ -64,22 +72,22 @@ def answer_sublevels(context: Context, path: Mapping[str, str], asked: Sublevels
     """
     level = context.level(path["atom"], asked.level)
     found, spread = sublevels(level, asked.field), sublevel_spread(level, asked.field)
-    sigma = spread.uncertainty[:, 0]
+    sigma, doubted = uncertainty_columns(dict(zip(UNCERTAINTIES, spread.uncertainty[ORDER, 0], strict=True)))
     columns: dict[str, Column] = {
         **label_columns(found),
         "energy_MHz": found.energy_mhz[0],
-        "energy_uncertainty_MHz": sigma[ENERGY],
+        "energy_uncertainty_MHz": sigma["energy_uncertainty_MHz"],
         "shift_MHz": found.shift_mhz[0],
-        "shift_uncertainty_MHz": sigma[SHIFT],
+        "shift_uncertainty_MHz": sigma["shift_uncertainty_MHz"],
         "slope_MHz_per_G": found.slope_mhz_per_gauss[0],
-        "slope_uncertainty_MHz_per_G": sigma[SLOPE],
+        "slope_uncertainty_MHz_per_G": sigma["slope_uncertainty_MHz_per_G"],
         "quadratic_Hz_per_G2": found.quadratic_hz_per_gauss2[0],
-        "quadratic_uncertainty_Hz_per_G2": sigma[QUADRATIC],
+        "quadratic_uncertainty_Hz_per_G2": sigma["quadratic_uncertainty_Hz_per_G2"],
         "moment_muB": np.asarray(found.moment_mu_b[0]),
     }
     return Answer(
         {"atom": level.atom, "level": level.name},
-        Table(columns),
+        Table(columns, doubted),
         used=level_inputs(level),
         warnings=level_warnings(level, asked.field),
         uncertainty_excludes=spread.excludes,

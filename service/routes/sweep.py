@@ -101,7 +101,7 @@ class SweepAnswered(Answered):
     columns: dict[str, list[float | str | None]] = Field(
         description="field_G; labels (F, m or lower_F, lower_m, upper_F, upper_m, polarisation); the numbers asked for"
     )
-    missing: list[Missing] = Field(description="columns that hold only null, with the reason")
+    missing: list[Missing] = Field(description="columns that hold null, with the reason")
 
 
 def sweep(context: Context, path: Mapping[str, str], asked: SweepAsked) -> Answer:
