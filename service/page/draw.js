@@ -14,8 +14,8 @@ function shape(tag, attributes, text) {
 }
 
 // Where nothing lies for more than a quarter of the whole span the drawing is cut, so that each group has its own axis.
-function groups(offsets) {
-  const order = offsets.map((_, k) => k).sort((a, b) => offsets[a] - offsets[b]);
+function groups(offsets, shown) {
+  const order = shown.sort((a, b) => offsets[a] - offsets[b]);
   const span = offsets[order.at(-1)] - offsets[order[0]];
   const cut = [[]];
   order.forEach((k, n) => {
@@ -42,10 +42,7 @@ function panel(columns, members, [left, right], strongest) {
   const x = (offset) => (high > low ? left + 12 + ((offset - low) / (high - low)) * (right - left - 24) : (left + right) / 2);
   const group = shape("g", {});
   group.append(shape("line", { x1: left, x2: right, y1: floor, y2: floor, class: "axis" }));
-  for (const k of members) {
-    const strength = columns.strength[k];
-    if (strength !== null && strength > 1e-6) group.append(stroke(columns, k, x(columns.offset_MHz[k]), floor, tallest * (strength / strongest)));
-  }
+  for (const k of members) group.append(stroke(columns, k, x(columns.offset_MHz[k]), floor, tallest * (columns.strength[k] / strongest)));
   const marks = high > low ? [low, (low + high) / 2, high] : [low];
   marks.forEach((offset, n) => {
     const anchor = marks.length === 1 ? "middle" : ["start", "middle", "end"][n];
@@ -59,7 +56,9 @@ export function strokes(columns) {
   const [width, height, gap] = [900, 235, 28];
   const strongest = Math.max(...columns.strength.map((s) => s || 0)) || 1;
   const drawing = shape("svg", { viewBox: `0 0 ${width} ${height}`, role: "img", "aria-labelledby": "sticks-text" });
-  const cut = groups(columns.offset_MHz);
+  const shown = columns.offset_MHz.map((_, k) => k).filter((k) => columns.strength[k] > 1e-6);
+  if (!shown.length) return document.createTextNode("No component has a strength in this model.");
+  const cut = groups(columns.offset_MHz, shown);
   const wide = (width - gap * (cut.length - 1)) / cut.length;
   cut.forEach((members, n) => drawing.append(panel(columns, members, [n * (wide + gap), n * (wide + gap) + wide], strongest)));
   ["sigma+", "pi", "sigma-"].forEach((name, k) => {
