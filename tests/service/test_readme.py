@@ -1,0 +1,58 @@
+"""What the README prints works as printed."""
+
+import re
+import shlex
+from pathlib import Path
+
+import httpx2
+import pytest
+
+from tests.service.conftest import ROOT, Server
+
+README = (Path(ROOT) / "README.md").read_text()
+REQUESTS = re.findall(r"^curl .*$", README, flags=re.MULTILINE)
+
+
+def test_there_are_ten_requests() -> None:
+    """The README promises ten requests."""
+    assert len(REQUESTS) == 10
+
+
+@pytest.mark.parametrize("command", REQUESTS)
+def test_request_of_the_readme_answers(command: str, server: Server) -> None:
+    """Each request, sent with the address of the test's server, is answered with 200 and a body with numbers."""
+    words = shlex.split(command)
+    address = words[-1].replace("http://127.0.0.1:8000", server.url)
+    if "-d" in words:
+        headers = dict([words[words.index("-H") + 1].split(": ")])
+        answer = httpx2.post(address, content=words[words.index("-d") + 1], headers=headers)
+    else:
+        answer = httpx2.get(address)
+    assert answer.status_code == 200, answer.text[:300]
+    assert re.search(r"\d\.\d", answer.text)
+
+
+def test_the_two_commands_exist_and_run() -> None:
+    """Both commands are files with their run bit, at the paths that the README prints."""
+    block = README.split("## Two commands")[1].split("```")[1].split()
+    assert block == ["deploy/serve", "deploy/test"]
+    for command in block:
+        assert (Path(ROOT) / command).stat().st_mode & 0o111
+
+
+def test_terminal_example_gives_the_server_its_answer(server: Server) -> None:
+    """The command of the README, as JSON, is the answer of the server's request."""
+    import contextlib
+    import io
+
+    import orjson
+
+    from service.cli import main
+
+    example = re.search(r"`sublevel (shift [^`]*)`", README)
+    assert example is not None
+    printed = io.StringIO()
+    with contextlib.redirect_stdout(printed):
+        assert main([*shlex.split(example[1]), "--json"]) == 0
+    query = {"line": "780", "lower": "2,2", "upper": "3,3", "field": "3.2"}
+    assert orjson.loads(printed.getvalue()) == httpx2.get(f"{server.url}/v1/atoms/87Rb/shift", params=query).json()
