@@ -51,8 +51,8 @@ def start_server(*options: str, **environment: str) -> tuple[subprocess.Popen[by
                 return process, server
         except httpx2.TransportError:
             time.sleep(0.02)
-    stop_server(process)
-    raise RuntimeError("the server did not become ready")
+    output = stop_server(process).decode()
+    raise RuntimeError(f"the server did not become ready: {output}")
 
 
 def stop_server(process: subprocess.Popen[bytes]) -> bytes:
