@@ -151,6 +151,8 @@ def _strengths(
     rate, branching = _read(table.einstein_A, "s-1"), _read(table.branching, "1")
     dipole = _read(table.reduced_dipole, "e*a0")
     is_dipole = table.multipole == "E1" and table.photons == 1 and not table.induced
+    if frequency is not None and frequency.value <= 0:
+        frequency = None  # levels in the wrong order: the audit says so, no rate follows from it
     if rate is None and branching is not None and upper.lifetime is not None:
         rate = rate_of_branching(branching, upper.lifetime)
     if rate is None and is_dipole and frequency is not None:

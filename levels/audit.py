@@ -13,6 +13,7 @@ from dataclasses import dataclass
 from pathlib import Path
 
 from levels import audit_constants as constants
+from levels import audit_rates as rates
 from levels import audit_sources as sources
 from levels import audit_spectrum as spectrum
 from levels import audit_structure as structure
@@ -55,6 +56,7 @@ SPECIES_RULES: dict[str, Callable[[Species], Broken]] = {
     "shift against frequency": spectrum.shift_against_frequency,
     "repeated frequency": spectrum.repeated_frequency,
     "reducible": spectrum.reducible,
+    "king": spectrum.king,
     "tabulated energy": spectrum.tabulated_energy,
     "A ratio": constants.a_ratio,
     "B ratio": constants.b_ratio,
@@ -63,9 +65,11 @@ SPECIES_RULES: dict[str, Callable[[Species], Broken]] = {
     "lande": constants.lande_factor,
     "intervals": constants.intervals,
     "label gaps": label_gaps,
-    "branching sum": constants.branching_sum,
-    "lifetime": constants.lifetime,
-    "line strength": constants.line_strength,
+    "branching sum": rates.branching_sum,
+    "lifetime": rates.lifetime,
+    "line strength": rates.line_strength,
+    "decay sum": rates.decay_sum,
+    "multiplet strength": rates.multiplet_strength,
 }
 VALUE_RULES = {"uncertainty": sources.uncertainty, "disagreement": sources.disagreement}
 BOOK_RULES: dict[str, Callable[[Catalogue], Broken]] = {

@@ -1,4 +1,4 @@
-"""Audit rules on constants: hyperfine ratios between isotopes, g factors, rates and lifetimes."""
+"""Audit rules on constants: hyperfine ratios between isotopes, nuclear and electronic g factors, intervals."""
 
 import math
 from collections.abc import Iterator
@@ -8,7 +8,7 @@ from levels.audit_spectrum import SIGMAS
 from levels.audit_structure import Broken, Species
 from levels.blocks import hyperfine_weights
 from levels.constants import M_E_OVER_M_P
-from levels.derive import lande, rate_of_dipole, rate_of_oscillator_strength
+from levels.derive import lande
 from levels.notation import parse_component, parse_half
 from levels.quantity import Quantity, in_unit
 from levels.records import Isotope, Level
@@ -20,7 +20,6 @@ A_ALLOWANCE_OTHER = 0.02
 B_ALLOWANCE = 0.02  # second-order hyperfine shifts sit in published B of fine-structure multiplets
 SHIELDING_ALLOWANCE = 0.025  # a tabulated bare moment exceeds the atomic one by 0.01 % to 1.7 %
 LANDE_ALLOWANCE = 0.02
-UNSTATED_RATE = 0.10  # a rate or branching without stated uncertainty is trusted to 10 %
 
 
 def a_ratio(species: Species) -> Broken:
@@ -157,76 +156,3 @@ def _interval(level: Level, twice_F: int, twice_F_up: int) -> tuple[float, float
     value = sum(weight * constant.value for weight, constant in constants if constant)
     spread = math.hypot(*(weight * (constant.uncertainty or 0.0) for weight, constant in constants if constant))
     return value, spread
-
-
-def branching_sum(species: Species) -> Broken:
-    """The branching fractions of one upper level sum to at most one."""
-    for name in species.data.levels:
-        published = [
-            line.branching.quantity()
-            for line in species.data.lines.values()
-            if line.upper == name and line.branching is not None
-        ]
-        values = [in_unit(item, "1") for item in published]
-        total = sum(item.value for item in values)
-        spread = math.hypot(*(item.uncertainty or 0.0 for item in values)) if values else 0.0
-        if total > 1 + 1e-3 + SIGMAS * spread:
-            yield f"levels.{name}.branching", f"fractions sum to {total:.5f}"
-
-
-def lifetime(species: Species) -> Broken:
-    """The partial rates of one upper level sum to at most its inverse lifetime, and each is its branching share."""
-    for level in species.reference.levels:
-        table = species.data.levels[level.name]
-        if level.lifetime is None or not (table.lifetime or table.width):
-            continue
-        total, spread = 0.0, 0.0
-        for name, line in species.data.lines.items():
-            if line.upper != level.name or line.einstein_A is None:
-                continue
-            rate = in_unit(line.einstein_A.quantity(), "s-1")
-            total += rate.value
-            spread = math.hypot(spread, _rate_spread(rate))
-            if line.branching is not None:
-                yield from _share(name, rate, in_unit(line.branching.quantity(), "1"), level.lifetime)
-        allowed = SIGMAS * math.hypot(spread, _rate_spread(level.lifetime) / level.lifetime.value**2)
-        if total > 1 / level.lifetime.value + allowed:
-            message = f"rates sum to {total:.4g} s-1, 1/lifetime is {1 / level.lifetime.value:.4g} s-1"
-            yield f"levels.{level.name}.lifetime", message
-
-
-def _rate_spread(quantity: Quantity) -> float:
-    if quantity.uncertainty is None:
-        return UNSTATED_RATE / SIGMAS * abs(quantity.value)
-    return quantity.uncertainty
-
-
-def _share(name: str, rate: Quantity, branching: Quantity, lifetime_s: Quantity) -> Broken:
-    share = rate.value * lifetime_s.value
-    relative = math.hypot(*(_rate_spread(item) / item.value for item in (rate, lifetime_s)), 0.0)
-    allowed = SIGMAS * math.hypot(share * relative, branching.uncertainty or 0.0)
-    if abs(share - branching.value) > allowed:
-        yield f"lines.{name}.branching", f"{branching.text}, rate times lifetime gives {share:.4g}"
-
-
-def line_strength(species: Species) -> Broken:
-    """Oscillator strength, reduced dipole element and rate of one line tell the same strength."""
-    for line in species.reference.lines:
-        table = species.data.lines[line.name]
-        if line.centroid is None or line.einstein_A is None:
-            continue
-        others = []
-        if table.oscillator_strength:
-            strength = table.oscillator_strength.quantity()
-            twice_J, twice_J_up = line.lower.twice_J, line.upper.twice_J
-            others.append(("f", rate_of_oscillator_strength(strength, line.centroid, twice_J, twice_J_up)))
-        if table.reduced_dipole:
-            element = table.reduced_dipole.quantity()
-            others.append(("dipole element", rate_of_dipole(element, line.centroid, line.upper.twice_J)))
-        for kind, rate in others:
-            allowed = SIGMAS * math.hypot(_rate_spread(rate), _rate_spread(line.einstein_A))
-            if abs(rate.value - line.einstein_A.value) > allowed:
-                yield (
-                    f"lines.{line.name}.strength",
-                    f"the {kind} gives {rate.value:.4g} s-1, the rate is {line.einstein_A.text}",
-                )

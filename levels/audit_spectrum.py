@@ -6,6 +6,9 @@ term that states none.
 
 import math
 from collections.abc import Iterable, Mapping
+from itertools import combinations
+
+import numpy as np
 
 from levels.audit_structure import Broken, Species
 from levels.constants import MHZ_PER_WAVENUMBER
@@ -23,6 +26,9 @@ from levels.quantity import Quantity
 from levels.schema import LineTable
 
 SIGMAS = 3.0
+# hyperfine repulsion moves centroids of odd isotopes, second-order field shifts bend the plot of heavy ones
+KING_ALLOWANCE_MHZ = 1.0
+KING_RELATIVE = 0.005
 # where the unresolved structure of a natural mixture has its centre depends on the light source: some 0.005 cm-1
 NATURAL_ALLOWANCE_MHZ = 150.0
 # natural-mixture tables and one isotope's frequency differ by isotope shifts: 5 GHz beyond lithium, hydrogen apart
@@ -155,3 +161,35 @@ def tabulated_energy(species: Species) -> Broken:
         if abs(line.centroid.value - difference) > allowed:
             miss = (line.centroid.value - difference) / MHZ_PER_WAVENUMBER
             yield f"lines.{line.name}", f"frequency is {miss:.4g} cm-1 above the difference of the energies"
+
+
+def king(species: Species) -> Broken:
+    """Isotope shifts of two lines, divided by the mass difference, lie on one straight line (a King plot)."""
+    levels = _levels(species)
+    modified = {name: _modified_shifts(species, line, levels) for name, line in species.data.lines.items()}
+    for first, second in combinations(modified, 2):
+        common = [isotope for isotope in modified[first] if isotope in modified[second]]
+        if len(common) < 3:
+            continue
+        x, y = (np.array([modified[name][isotope][0] for isotope in common]) for name in (first, second))
+        slope, offset = np.polyfit(x, y, 1)
+        for isotope, miss in zip(common, y - slope * x - offset, strict=True):
+            inverse_mass = modified[first][isotope][2]
+            spread = math.hypot(slope * modified[first][isotope][1], modified[second][isotope][1])
+            shift_mhz = abs(modified[second][isotope][0] * inverse_mass)
+            if abs(miss * inverse_mass) > SIGMAS * spread + KING_ALLOWANCE_MHZ + KING_RELATIVE * shift_mhz:
+                message = f"isotope {isotope} is {miss * inverse_mass:.3g} MHz off the straight line"
+                yield f"king.{first} nm.{second} nm", message
+
+
+def _modified_shifts(species: Species, line: LineTable, levels: Levels) -> dict[int, tuple[float, float, float]]:
+    """Per isotope: shift over the difference of inverse masses, the shift's uncertainty, that difference (1/u)."""
+    masses = {number: atom.isotope.mass.value for number, atom in species.atoms.items() if atom.isotope.mass}
+    reference = masses.get(species.data.element.reference_isotope)
+    found: dict[int, tuple[float, float, float]] = {}
+    for entry in line.shift:
+        shift = published_shift(entry, line, levels)
+        if shift is not None and reference is not None and entry.isotope in masses:
+            inverse_mass = 1 / reference - 1 / masses[entry.isotope]
+            found.setdefault(entry.isotope, (shift.value / inverse_mass, spread_of(shift), inverse_mass))
+    return found

@@ -99,6 +99,8 @@ BREAKS = {
         (D2, given("einstein_A", "3.69(5)e7 s-1") + given("reduced_dipole", "6.51(2) e*a0") + D2),
         (D2, given("einstein_A", "3.69(5)e7 s-1") + given("oscillator_strength", "0.90(1)") + D2),
     ],
+    "decay sum": [('aliases = ["D1"]\n', 'aliases = ["D1"]\n' + given("einstein_A", "2.0(1)e7 s-1"))],
+    "multiplet strength": [('"30.0(5) ns"', '"1.00(2) ns"')],
     "uncertainty": [('"6.00(5) MHz"', '"6.00 MHz"')],
     "disagreement": [(', note = "radiation trapping not corrected"', "")],
     "known sources": [('source = "zedd2001"', 'source = "zed2001"')],
@@ -158,6 +160,21 @@ def test_shifts_of_three_lines_close_their_loop(tmp_path: Path) -> None:
     assert {finding.rule for finding in audit(catalogue)} == set()
 
 
+def test_isotope_shifts_of_two_lines_lie_on_a_line(tmp_path: Path) -> None:
+    """Shifts of the 833 nm line that are 1.1 times those of 800 nm make a straight King plot; one that is not shows."""
+    entry = '{{ isotope = {}, value = "{}(5) MHz", source = "zyx1999", evidence = "recalled" }}'
+    mass = '[isotopes.305]\nmass = { value = "305.015000(5) u", source = "zedd2001", evidence = "checked" }\n'
+    text = (FICTIONAL / "Zz.toml").read_text().replace("[isotopes.305]\n", mass)
+    text = text.replace("{ isotope = 301, value", entry.format(305, "800.0") + ",\n  { isotope = 301, value")
+    copy = shutil.copytree(FICTIONAL, tmp_path / "data")
+    for last, rules in (("880.0", set()), ("980.0", {"king"})):
+        shifts = ", ".join(entry.format(*pair) for pair in ((301, "220.0"), (303, "550.0"), (305, last)))
+        (copy / "Zz.toml").write_text(
+            text.replace("nominal_nm = 833.333\n", f"nominal_nm = 833.333\nshift = [{shifts}]\n")
+        )
+        assert {finding.rule for finding in audit(load([copy]))} == rules
+
+
 def test_smooth_trends_along_a_column() -> None:
     """Fine structure that does not grow from sodium to potassium is found; one that grows is not."""
     small = Species(validate(document('"833.1044(5) nm", medium = "air"', '"806.4516(5) nm"'), "Zz.toml"))
@@ -170,7 +187,7 @@ def test_smooth_trends_along_a_column() -> None:
 
 def test_every_rule_has_a_broken_fixture() -> None:
     """No rule joins the table without a test that makes it fire."""
-    assert {*BREAKS, *REFERENCE_BREAKS, "shift loops", "smooth trends"} == set(RULES)
+    assert {*BREAKS, *REFERENCE_BREAKS, "shift loops", "king", "smooth trends"} == set(RULES)
 
 
 def test_an_exception_answers_its_finding_and_is_counted(tmp_path: Path) -> None:
