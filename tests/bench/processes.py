@@ -7,6 +7,7 @@ import pathlib
 import signal
 import socket
 import subprocess
+import tempfile
 import time
 from collections.abc import Iterator, Sequence
 
@@ -44,17 +45,20 @@ def is_ready(port: int) -> bool:
 @contextlib.contextmanager
 def server(command: Sequence[str], port: int, cpu: int | None = None) -> Iterator[tuple[int, float]]:
     """Run a server until the block ends; gives its process id and the seconds until it was ready."""
+    log = tempfile.TemporaryFile(mode="w+")
     started = time.perf_counter()
     process = subprocess.Popen(
         command,
-        stdout=subprocess.DEVNULL,
+        stdout=log,
+        stderr=log,
         env={"OPENBLAS_NUM_THREADS": "1", **os.environ},
         preexec_fn=None if cpu is None else lambda: os.sched_setaffinity(0, {cpu}),
     )
     try:
         while not is_ready(port):
             if process.poll() is not None or time.perf_counter() - started > PATIENCE_SECONDS:
-                raise RuntimeError(f"{command[0]} did not become ready")
+                log.seek(0)
+                raise RuntimeError(f"{command[0]} did not become ready: {log.read()[-2000:]}")
             time.sleep(0.005)
         yield process.pid, time.perf_counter() - started
     finally:
