@@ -45,28 +45,28 @@ def is_ready(port: int) -> bool:
 @contextlib.contextmanager
 def server(command: Sequence[str], port: int, cpu: int | None = None) -> Iterator[tuple[int, float]]:
     """Run a server until the block ends; gives its process id and the seconds until it was ready."""
-    log = tempfile.TemporaryFile(mode="w+")
-    started = time.perf_counter()
-    process = subprocess.Popen(
-        command,
-        stdout=log,
-        stderr=log,
-        env={"OPENBLAS_NUM_THREADS": "1", **os.environ},
-        preexec_fn=None if cpu is None else lambda: os.sched_setaffinity(0, {cpu}),
-    )
-    try:
-        while not is_ready(port):
-            if process.poll() is not None or time.perf_counter() - started > PATIENCE_SECONDS:
-                log.seek(0)
-                raise RuntimeError(f"{command[0]} did not become ready: {log.read()[-2000:]}")
-            time.sleep(0.005)
-        yield process.pid, time.perf_counter() - started
-    finally:
-        process.send_signal(signal.SIGTERM)
+    with tempfile.TemporaryFile(mode="w+") as log:
+        started = time.perf_counter()
+        process = subprocess.Popen(
+            command,
+            stdout=log,
+            stderr=log,
+            env={"OPENBLAS_NUM_THREADS": "1", **os.environ},
+            preexec_fn=None if cpu is None else lambda: os.sched_setaffinity(0, {cpu}),
+        )
         try:
-            process.wait(30)
-        except subprocess.TimeoutExpired:
-            process.kill()
+            while not is_ready(port):
+                if process.poll() is not None or time.perf_counter() - started > PATIENCE_SECONDS:
+                    log.seek(0)
+                    raise RuntimeError(f"{command[0]} did not become ready: {log.read()[-2000:]}")
+                time.sleep(0.005)
+            yield process.pid, time.perf_counter() - started
+        finally:
+            process.send_signal(signal.SIGTERM)
+            try:
+                process.wait(30)
+            except subprocess.TimeoutExpired:
+                process.kill()
 
 
 def cpu_seconds(pid: int) -> float:
