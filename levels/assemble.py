@@ -20,6 +20,7 @@ from levels.derive import (
 )
 from levels.frequencies import Centroid, Edge, edges_of, level_energy, line_centroids, own_centroids
 from levels.notation import MULTIPOLE_RANK, format_isotope, parse_component, parse_half
+from levels.published import Value
 from levels.quantity import (
     Quantity,
     in_unit,
@@ -29,7 +30,7 @@ from levels.quantity import (
     width_of_lifetime,
 )
 from levels.records import Atom, Isotope, Level, Line
-from levels.schema import DataFile, Hyperfine, LevelTable, LineTable, Value
+from levels.schema import DataFile, Hyperfine, LevelTable, LineTable
 
 _PHOTONS = {1: "", 2: "two-photon line: the frequency is the sum of both photons, the wavelength that of each"}
 _GROUND_ENERGY = Quantity(0.0, 0.0, "cm-1", "0 cm-1", "", "computed", "the ground level")

@@ -9,8 +9,9 @@ from levels.audit_spectrum import allowance
 from levels.audit_structure import Broken, Species
 from levels.audit_values import alternatives_of, values_of
 from levels.catalogue import Catalogue
+from levels.published import LineFrequency
 from levels.quantity import Quantity, frequency_of, in_unit
-from levels.schema import DataFile, LineFrequency
+from levels.schema import DataFile
 from levels.units import CANONICAL, UNITS
 
 _DOI = re.compile(r"10\.[0-9]{4,9}/[!-~]*[A-Za-z0-9)>]")

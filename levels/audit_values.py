@@ -5,7 +5,8 @@ from typing import Any
 
 from pydantic import BaseModel
 
-from levels.schema import DataFile, Value
+from levels.published import Value
+from levels.schema import DataFile
 
 
 def values_of(data: DataFile) -> Iterator[tuple[str, Value]]:

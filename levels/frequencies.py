@@ -14,6 +14,7 @@ from dataclasses import dataclass, replace
 from levels import air
 from levels.blocks import hyperfine_weights
 from levels.notation import parse_feature
+from levels.published import LineFrequency, Shift
 from levels.quantity import (
     Quantity,
     combine,
@@ -25,7 +26,7 @@ from levels.quantity import (
     wavenumber_of,
 )
 from levels.records import Level
-from levels.schema import DataFile, LineFrequency, LineTable, Shift
+from levels.schema import DataFile, LineTable
 
 Whose = int | str  # a mass number or "natural"
 Levels = Mapping[Whose, Mapping[str, Level]]

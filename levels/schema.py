@@ -1,210 +1,39 @@
-"""What one data file may contain: element, isotopes, levels, lines, references. Unknown keys are refused.
+"""What one data file may contain: element, isotopes, levels, lines. Unknown keys are refused.
 
-A file is `levels/data/<Symbol><charge>.toml`. Every published number is a table with the digits as published, the
-reference key and the evidence; DEVELOPERS.md shows a commented example. What concerns one table alone is checked here
-while reading; what needs the whole file (names that refer to each other) by `DataFile` once all tables are read.
+A file is `levels/data/<Symbol><charge>.toml`; DEVELOPERS.md shows a commented example. What concerns one table alone is
+checked here while reading; what needs the whole file (names that refer to each other) by `DataFile` once all tables
+are read.
 """
 
 import re
-from typing import Annotated, Any, ClassVar, Literal, Self
+from typing import Annotated, Any, Literal, Self
 
-from pydantic import AfterValidator, BaseModel, BeforeValidator, ConfigDict, Field, ValidationError, model_validator
+from pydantic import Field, ValidationError, model_validator
 
-from levels.errors import DataError, OutsideValidity, UnknownName
-from levels.notation import (
-    MULTIPOLE_RANK,
-    format_half,
-    format_isotope,
-    parse_feature,
-    parse_half,
-    parse_level,
-    term_quantum_numbers,
+from levels.errors import DataError, OutsideValidity
+from levels.notation import format_half, format_isotope, parse_half, parse_level, term_quantum_numbers
+from levels.published import (
+    Area,
+    Dipole,
+    Energy,
+    Fraction,
+    Frequency,
+    HalfText,
+    Interval,
+    LevelText,
+    LineFrequency,
+    Mass,
+    MassNumber,
+    Moment,
+    Polarisability,
+    Rate,
+    Shift,
+    Strength,
+    Table,
+    Time,
+    Value,
+    Width,
 )
-from levels.quantity import Quantity, in_unit, read
-
-Evidence = Literal["checked", "recalled", "computed"]
-
-
-def _names(reader: Any) -> AfterValidator:
-    """A check that text can be read by one of the notation's readers, its message being the reader's."""
-
-    def check(text: str) -> str:
-        try:
-            reader(text)
-        except (OutsideValidity, UnknownName) as error:
-            raise ValueError(str(error)) from None
-        return text
-
-    return AfterValidator(check)
-
-
-HalfText = Annotated[str, _names(parse_half)]
-LevelText = Annotated[str, _names(parse_level)]
-FeatureText = Annotated[str, _names(lambda text: text in ("centroid", "average") or parse_feature(text))]
-
-
-def _mass_number(key: object) -> int:
-    if not re.fullmatch("[1-9][0-9]{0,2}", str(key)):  # TOML keys are text: "040" and "4e1" are no isotopes
-        raise ValueError("a mass number such as 87")
-    return int(str(key))
-
-
-MassNumber = Annotated[int, BeforeValidator(_mass_number)]
-WhoseValue = MassNumber | Literal["natural"]
-
-
-class Table(BaseModel):
-    """A table of a data file: frozen, and a key it does not know is an error."""
-
-    model_config = ConfigDict(extra="forbid", frozen=True)
-
-
-class Value(Table):
-    """A published number: digits and unit as published, where from, and how far it was compared."""
-
-    dimensions: ClassVar[tuple[str, ...]] = ("number",)
-    positive: ClassVar[bool] = False
-
-    value: str
-    source: str = ""
-    evidence: Evidence
-    note: str = ""
-    of: str = ""
-    formula: str = ""
-    alternatives: tuple[Self, ...] = ()
-
-    @model_validator(mode="after")
-    def _provenance(self) -> Self:
-        if self.evidence == "computed" and not self.formula:
-            raise ValueError('evidence = "computed" needs formula = "..."')
-        if self.evidence != "computed" and not self.source:
-            raise ValueError(f'evidence = "{self.evidence}" needs source = "<reference key>"')
-        try:
-            quantity = self.quantity()
-        except OutsideValidity as error:
-            raise ValueError(str(error)) from None
-        if self.positive and not quantity.value > 0:
-            raise ValueError(f"{self.value}: must be above zero")
-        return self
-
-    def quantity(self) -> Quantity:
-        """The number with its provenance, in the unit it was published in."""
-        formula = f"computed: {self.formula}" if self.formula else ""
-        return read(
-            self.value,
-            source=self.source,
-            evidence=self.evidence,
-            dimension=self.dimensions,
-            note="; ".join(filter(None, (formula, self.note))),
-            alternatives=[other.quantity() for other in self.alternatives],
-        )
-
-
-class Frequency(Value):
-    """A hyperfine constant, an interval, a width or a shift."""
-
-    dimensions = ("frequency",)
-
-
-class Width(Frequency):
-    """A full natural width Gamma/2pi."""
-
-    positive = True
-
-
-class Fraction(Value):
-    """A fraction of a whole: an abundance or a branching."""
-
-    positive = True
-
-    @model_validator(mode="after")
-    def _at_most_one(self) -> Self:
-        if in_unit(self.quantity(), "1").value > 1:
-            raise ValueError(f"{self.value}: is more than the whole")
-        return self
-
-
-class Strength(Value):
-    """An absorption oscillator strength."""
-
-    positive = True
-
-
-class Time(Value):
-    """A lifetime or half-life."""
-
-    dimensions = ("time",)
-    positive = True
-
-
-class Mass(Value):
-    """The mass of the neutral atom."""
-
-    dimensions = ("mass",)
-    positive = True
-
-
-class Moment(Value):
-    """A nuclear magnetic moment."""
-
-    dimensions = ("moment",)
-
-
-class Area(Value):
-    """A nuclear quadrupole moment."""
-
-    dimensions = ("area",)
-
-
-class Rate(Value):
-    """A partial decay rate."""
-
-    dimensions = ("rate",)
-    positive = True
-
-
-class Dipole(Value):
-    """A reduced dipole element, by the 3j form of the Wigner-Eckart theorem."""
-
-    dimensions = ("dipole",)
-
-
-class Polarisability(Value):
-    """A scalar static contribution to a polarisability."""
-
-    dimensions = ("polarisability",)
-
-
-class Energy(Value):
-    """An energy above the ground level, between hyperfine centroids, and whose it is."""
-
-    dimensions = ("wavenumber", "frequency")
-
-    isotope: WhoseValue | None = None
-
-
-class Interval(Frequency):
-    """E(second F) - E(first F) of a level, signed."""
-
-    between: FeatureText = ""
-
-
-class LineFrequency(Value):
-    """A frequency, wavenumber or wavelength of a line: of which isotope and of what it is."""
-
-    dimensions = ("frequency", "wavenumber", "length")
-    positive = True
-
-    isotope: WhoseValue | None = None
-    of: FeatureText = "centroid"
-    medium: Literal["vacuum", "air"] = "vacuum"
-
-
-class Shift(Frequency):
-    """nu(isotope) - nu(reference isotope)."""
-
-    isotope: MassNumber | None = None
-    of: FeatureText = "centroid"
 
 
 class Element(Table):
@@ -258,7 +87,7 @@ class LevelTable(Table):
     lifetime: Time | None = None
     width: Width | None = None
     g_J: Value | None = None
-    hyperfine: dict[MassNumber, Hyperfine] = {}
+    hyperfine: dict[MassNumber, Hyperfine] = Field(default_factory=dict)
     note: str = ""
 
     @model_validator(mode="after")
@@ -322,8 +151,8 @@ class DataFile(Table):
     element: Element
     isotopes: dict[MassNumber, IsotopeTable]
     levels: dict[LevelText, LevelTable]
-    lines: dict[str, LineTable] = {}
-    polarisability: dict[str, PolarisabilityTable] = {}
+    lines: dict[str, LineTable] = Field(default_factory=dict)
+    polarisability: dict[str, PolarisabilityTable] = Field(default_factory=dict)
     exceptions: tuple[RuleException, ...] = ()
 
     @property
@@ -402,8 +231,3 @@ def _explain(item: Any) -> tuple[str, str]:
     elif isinstance(given, str | int | float) and repr(given) not in message:
         message += f" (given {given!r})"
     return ".".join(parts), message
-
-
-def rank_of(multipole: str) -> int:
-    """The multipole rank of E1, M1, E2, M2, E3."""
-    return MULTIPOLE_RANK[multipole]

@@ -7,7 +7,8 @@ from typing import Any
 import pytest
 
 from levels.errors import DataError
-from levels.schema import Table, validate
+from levels.published import Table
+from levels.schema import validate
 
 SECOND = '{ value = "1 s", source = "x", evidence = "checked" }'
 ZZ = (Path(__file__).parents[1] / "data" / "Zz.toml").read_text()
