@@ -12,8 +12,8 @@ import pytest
 
 from levels.audit_values import values_of
 from levels.catalogue import load
+from levels.published import Value
 from levels.quantity import resolution
-from levels.schema import Value
 
 LISTS = Path(__file__).parents[1] / "data" / "open_lists_others.csv"
 ROWS = list(csv.DictReader(LISTS.read_text(encoding="utf-8").splitlines()))
