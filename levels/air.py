@@ -15,7 +15,7 @@ def refractive_index(vacuum_nm: float) -> float:
     """The phase index of standard air at a vacuum wavelength.
 
     >>> round(refractive_index(633.0), 8)
-    1.00027652
+    1.00027653
     """
     if not SHORTEST_NM <= vacuum_nm <= LONGEST_NM:
         allowed = f"{SHORTEST_NM:g} to {LONGEST_NM:g} nm, where the dispersion of air is known"
