@@ -6,7 +6,6 @@ that all decays of one upper sublevel to the lower level sum to 1; the nuclear s
 line's centroid, shifts from the same component at zero field.
 """
 
-from collections.abc import Callable
 from dataclasses import dataclass
 from fractions import Fraction
 from functools import lru_cache
@@ -22,6 +21,7 @@ from levels.notation import format_half, format_sublevel
 from levels.records import Line
 from levels.sensitivity import ENERGY, Spread, add_terms, movement, spread, terms_of
 from levels.sublevels import (
+    HZ_PER_MHZ,
     Constants,
     Eigen,
     as_fields,
@@ -30,7 +30,6 @@ from levels.sublevels import (
     labels_of,
     solve_block,
     sublevels,
-    zero_field_mhz,
 )
 
 Array = NDArray[np.float64]
@@ -193,9 +192,8 @@ def component(line: Line, lower: Label, upper: Label, field_gauss: float) -> Com
         terms_of(line.upper, movement(up, fields, [rank_up])),
         terms_of(line.lower, movement(low, fields, [rank_low]), sign=-1.0),
     )
-    ends = ((up, rank_up), (low, rank_low))
-    slope = _difference(ends, Eigen.slope_mhz_per_gauss)
-    quadratic = _difference(ends, Eigen.quadratic_mhz_per_gauss2)
+    slope = up.slope_mhz_per_gauss()[0, rank_up] - low.slope_mhz_per_gauss()[0, rank_low]
+    quadratic = up.quadratic_mhz_per_gauss2([rank_up])[0, 0] - low.quadratic_mhz_per_gauss2([rank_low])[0, 0]
     return Component(
         line,
         lower,
@@ -203,19 +201,14 @@ def component(line: Line, lower: Label, upper: Label, field_gauss: float) -> Com
         (upper[1] - lower[1]) // 2,
         float(fields[0]),
         float(up.energy_mhz[0, rank_up] - low.energy_mhz[0, rank_low]),
-        zero_field_mhz(above, upper[0]) - zero_field_mhz(below, lower[0]),
-        slope,
-        quadratic * 1e6,
+        up.given.rest_mhz[rank_up] - low.given.rest_mhz[rank_low],
+        float(slope),
+        float(quadratic) * HZ_PER_MHZ,
         float(amplitudes(line, low, up)[0, rank_up, rank_low] ** 2),
         zero_field_strength(line, lower, upper),
         bool(strength_model(line)),
         spread(terms),
     )
-
-
-def _difference(ends: tuple[tuple[Eigen, int], tuple[Eigen, int]], number: Callable[[Eigen], Array]) -> float:
-    (up, rank_up), (low, rank_low) = ends
-    return float(number(up)[0, rank_up] - number(low)[0, rank_low])
 
 
 def components(line: Line, field_gauss: ArrayLike, q: int | None = None) -> Components:

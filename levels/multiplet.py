@@ -62,10 +62,10 @@ def second_order(twice_J: int, term: str, neighbours: tuple[tuple[int, float], .
 
 def mixing(level: Level, field_gauss: ArrayLike) -> Mixing | None:
     """Estimate the fine-structure mixing of a level at the largest of the fields; None without known neighbours."""
-    field = float(np.max(np.abs(field_gauss)))
     shifts = second_order(level.twice_J, level.term, level.neighbours)
     if not shifts:
         return None
+    field = abs(field_gauss) if isinstance(field_gauss, float) else float(np.max(np.abs(field_gauss)))
     names = tuple(f"J = {format_half(twice_other)}" for twice_other, _ in level.neighbours)
     nearest = min(abs(gap) for _, gap in level.neighbours)
     shift = max(abs(number) for number in shifts) * field**2

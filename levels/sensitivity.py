@@ -17,11 +17,11 @@ which enters once.
 
 Some constants have no stated uncertainty (a Lande factor by formula, a value printed without one). Nothing is guessed
 for them: they are named, and where a change by `UNSTATED_SHARE` of its size would move a number by more than the rest
-is uncertain, that number has no uncertainty (NaN). Measured g_J depart from the coupling formulas by about that share. The
-second-order mixing of `multiplet` is treated alike, at `MIXING_SHARE`.
+is uncertain, that number has no uncertainty (NaN). Measured g_J depart from the coupling formulas by about that share.
+The second-order mixing of `multiplet` is treated alike, at `MIXING_SHARE`.
 """
 
-from collections.abc import Hashable, Mapping, Sequence
+from collections.abc import Hashable, Sequence
 from dataclasses import dataclass
 from functools import lru_cache
 
@@ -67,7 +67,7 @@ def movement(eigen: Eigen, field_gauss: Array, ranks: Sequence[int] | slice = sl
     numbers[SLOPE, 3:] = (chosen * W_v).sum(axis=-2)
     if given.zeeman.size > 1:
         _perturb(numbers, eigen, (P_v, W_v), field_gauss, ranks)
-    if given.square.any():
+    if given.mixes:
         square, field = given.square @ (chosen * chosen), field_gauss[:, None]
         everything[:, MIXING] = field**2 * square, 2 * field * square, square * HZ_PER_MHZ, field**2 * square
     return Movement(everything)
@@ -77,25 +77,31 @@ def _applied(eigen: Eigen, vectors: Array, field_gauss: Array) -> tuple[Array, A
     """Apply dH/dp for the five constants (5, n, d, k), and d2H/dBdp for the two g factors (2, n, d, k), to vectors."""
     W = eigen.given.linear[:, None, :, None] * vectors
     P = np.empty((len(NAMES), *vectors.shape))
-    P[:3] = eigen.given.steady[:, None] @ vectors
-    P[3:] = field_gauss[:, None, None] * W
+    np.matmul(eigen.given.steady[:, None], vectors, out=P[:3])
+    np.multiply(field_gauss[:, None, None], W, out=P[3:])
     return P, W
 
 
 def _perturb(
     numbers: Array, eigen: Eigen, applied: tuple[Array, Array], field_gauss: Array, ranks: Sequence[int] | slice
 ) -> None:
-    """Add the sums over other states of the module's head to slope and quadratic coefficient, in place."""
-    turn, Z = eigen.states.swapaxes(-1, -2), eigen.zeeman_in_eigenbasis()
-    R = -eigen.inverse_gaps()[:, :, ranks]  # (n, l, k) with k the chosen rank: 1/(E_k - E_l)
-    ZR = Z[:, :, ranks] * R
+    """Add the sums over other states of the module's head to slope and quadratic coefficient, in place.
+
+    All arrays are (n, l, k) with k the chosen rank and l every state of the block.
+    """
+    states, chosen = eigen.states, eigen.states[:, :, ranks]
+    turn, moving = states.swapaxes(-1, -2), eigen.moving[:, :, None]
+    R = eigen.inverse_gaps_to(ranks)
+    Z = turn @ (moving * chosen)
+    ZR = Z * R
+    mixed = states @ ZR
     P_lk, W_lk = turn @ applied[0], turn @ applied[1]
     numbers[SLOPE] += 2 * (ZR * P_lk).sum(axis=-2)
-    mixed = eigen.states @ ZR
-    Z_kk = Z.diagonal(axis1=1, axis2=2)[:, None, ranks]
-    weight = 2 * R * (Z @ ZR - Z_kk * ZR)
-    square = turn @ (eigen.given.square[:, None] * eigen.states[:, :, ranks])
-    quadratic = ((weight + 2 * R * square) * P_lk).sum(axis=-2)
+    Z_kk = (chosen * chosen * moving).sum(axis=-2)[:, None]
+    weight = turn @ (moving * mixed) - Z_kk * ZR
+    if eigen.given.mixes:
+        weight += turn @ (eigen.given.square[:, None] * chosen)
+    quadratic = (2 * R * weight * P_lk).sum(axis=-2)
     quadratic += (mixed * _applied(eigen, mixed, field_gauss)[0]).sum(axis=-2)
     quadratic -= numbers[ENERGY] * (ZR * ZR).sum(axis=-2)
     quadratic[3:] += 2 * (ZR * W_lk).sum(axis=-2)
@@ -110,40 +116,52 @@ def _zero_field_weights(part: Block, labels: tuple[int, ...]) -> Array:
     return weights
 
 
-Term = tuple[Quantity | None, str, Array]
-Terms = dict[Hashable, Term]
+@dataclass(frozen=True, slots=True, eq=False)
+class Terms:
+    """Contributions of constants to the numbers of some sublevels: derivatives of shape (t, 4, n, k), a row each.
+
+    A key says which rows of two sublevels are the same constant; the mixing has no constant.
+    """
+
+    keys: tuple[Hashable, ...]
+    constants: tuple[Quantity | None, ...]
+    names: tuple[str, ...]
+    numbers: Array
 
 
 def terms_of(level: Level, moved: Movement, sign: float = 1.0) -> Terms:
-    """Name each constant's contribution: the constant, its spoken name, and its derivatives (4, n, k).
+    """Name each constant's contribution.
 
     Two levels that rest on the same published g_I share its key, so that their contributions add before squaring.
     """
-    terms: Terms = {}
-    for at, name in enumerate(NAMES):
-        constant = getattr(level, name)
-        if constant is not None and np.any(moved.numbers[:, at]):
-            key: Hashable = (name, constant) if name == "g_I" else (name, level.name)
-            owner = level.atom if name == "g_I" else level.name
-            terms[key] = (constant, f"{name}({owner})", sign * moved.numbers[:, at])
-    if np.any(moved.numbers[:, MIXING]):
-        name = f"fine-structure mixing({level.name})"
-        terms["mixing", level.name] = (None, name, sign * moved.numbers[:, MIXING])
-    return terms
+    constants = (level.A, level.B, level.C, level.g_J, level.g_I, None)
+    own = level.name
+    keys = (("A", own), ("B", own), ("C", own), ("g_J", own), ("g_I", level.g_I), ("mixing", own))
+    names = (
+        f"A({own})",
+        f"B({own})",
+        f"C({own})",
+        f"g_J({own})",
+        f"g_I({level.atom})",
+        f"fine-structure mixing({own})",
+    )
+    return Terms(keys, constants, names, sign * moved.numbers.swapaxes(0, 1))
 
 
 def add_terms(first: Terms, second: Terms) -> Terms:
-    """Add the contributions of two sublevels; those with the same key are the same constant.
-
-    A constant whose contributions cancel drops out, so that nobody is told that its uncertainty is missing.
-    """
-    total = dict(first)
-    for key, (constant, name, numbers) in second.items():
-        known = total.pop(key, None)
-        together = numbers if known is None else known[2] + numbers
-        if np.any(np.abs(together) > CANCELLED * np.abs(numbers)):
-            total[key] = (constant, name, together)
-    return total
+    """Add the contributions of two sublevels; those with the same key are the same constant."""
+    places = [first.keys.index(key) if key in first.keys else -1 for key in second.keys]
+    apart = [row for row, place in enumerate(places) if place < 0]
+    total = np.concatenate([first.numbers, second.numbers[apart]])
+    for row, place in enumerate(places):
+        if place >= 0:
+            total[place] += second.numbers[row]
+    return Terms(
+        (*first.keys, *(second.keys[row] for row in apart)),
+        (*first.constants, *(second.constants[row] for row in apart)),
+        (*first.names, *(second.names[row] for row in apart)),
+        total,
+    )
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -159,25 +177,26 @@ class Spread:
     excludes: tuple[str, ...]
 
 
-def spread(terms: Mapping[Hashable, Term]) -> Spread:
-    """Combine stated contributions in quadrature; name the rest, and say where it could outweigh them."""
-    shape = next(iter(terms.values()))[2].shape if terms else (4, 1, 1)
-    variance, doubt = np.zeros(shape), np.zeros(shape)
-    for constant, _, numbers in terms.values():
-        if constant is not None and constant.uncertainty is not None:
-            variance += (numbers * constant.uncertainty) ** 2
-        else:
-            doubt = np.maximum(doubt, np.abs(numbers) * _share(constant))
-    stated = np.sqrt(variance)
-    lost = doubt > stated
+def spread(terms: Terms) -> Spread:
+    """Combine stated contributions in quadrature; name the rest, and say where it could outweigh them.
+
+    A constant that a level does not have moves nothing here: `sublevels.cautions` speaks of it.
+    """
+    sigmas = [0.0 if constant is None else constant.uncertainty or 0.0 for constant in terms.constants]
+    shares = [_share(constant, key) for constant, key in zip(terms.constants, terms.keys, strict=True)]
+    stated = np.sqrt(((terms.numbers.T * sigmas) ** 2).sum(axis=-1)).T
+    doubts = np.abs(terms.numbers.T * shares).T
+    uncertainty = np.where(doubts.max(axis=0) > stated, np.nan, stated)
     excludes = tuple(
         name
-        for constant, name, numbers in terms.values()
-        if (constant is None and np.any(np.abs(numbers) * MIXING_SHARE > stated))
-        or (constant is not None and constant.uncertainty is None)
+        for constant, name, doubt, share in zip(terms.constants, terms.names, doubts, shares, strict=True)
+        if share and (doubt > stated if constant is None else doubt).any()
     )
-    return Spread(np.where(lost, np.nan, stated), stated, excludes)
+    return Spread(uncertainty, stated, excludes)
 
 
-def _share(constant: Quantity | None) -> float:
-    return MIXING_SHARE if constant is None else UNSTATED_SHARE * abs(constant.value)
+def _share(constant: Quantity | None, key: Hashable) -> float:
+    """The change to allow for in a constant without a stated uncertainty; 0 where one is stated or nothing is known."""
+    if constant is None:
+        return MIXING_SHARE if isinstance(key, tuple) and key[0] == "mixing" else 0.0
+    return UNSTATED_SHARE * abs(constant.value) if constant.uncertainty is None else 0.0

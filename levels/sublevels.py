@@ -8,6 +8,7 @@ Field in gauss, signed along z; energies in MHz from the level's hyperfine centr
 `quadratic` is half the second derivative. The moment along z is -dE/dB.
 """
 
+from collections.abc import Sequence
 from dataclasses import dataclass
 from functools import lru_cache
 
@@ -68,22 +69,20 @@ class Eigen:
         slope: Array = (self.moving[:, None, :] @ (self.states * self.states))[:, 0, :]
         return slope
 
-    def zeeman_in_eigenbasis(self) -> Array:
-        """Return dH/dB between the eigenstates, shape (n, d, d)."""
-        return self.states.swapaxes(-1, -2) @ (self.moving[:, :, None] * self.states)
-
-    def inverse_gaps(self) -> Array:
-        """Return 1/(E_k - E_l) off the diagonal and zero on it, shape (n, d, d)."""
-        gaps: Array = self.energy_mhz[:, :, None] - self.energy_mhz[:, None, :]
-        gaps.reshape(gaps.shape[0], -1)[:, :: gaps.shape[-1] + 1] = np.inf
+    def inverse_gaps_to(self, ranks: Sequence[int] | slice) -> Array:
+        """Return 1/(E_k - E_l) for every l and the chosen k, zero for l = k, shape (n, l, k)."""
+        gaps: Array = self.energy_mhz[:, None, ranks] - self.energy_mhz[:, :, None]
+        gaps[gaps == 0.0] = np.inf
         inverse: Array = np.reciprocal(gaps)
         return inverse
 
-    def quadratic_mhz_per_gauss2(self) -> Array:
-        """Return half of d2E/dB2 by second-order perturbation theory, shape (n, d)."""
-        result: Array = self.given.square @ (self.states * self.states)
+    def quadratic_mhz_per_gauss2(self, ranks: Sequence[int] | slice = slice(None)) -> Array:
+        """Return half of d2E/dB2 of the chosen ranks by second-order perturbation theory, shape (n, k)."""
+        chosen = self.states[:, :, ranks]
+        result: Array = self.given.square @ (chosen * chosen) if self.given.mixes else np.zeros(chosen.shape[::2])
         if self.energy_mhz.shape[1] > 1:
-            result += (self.zeeman_in_eigenbasis() ** 2 * self.inverse_gaps()).sum(axis=-1)
+            Z = self.states.swapaxes(-1, -2) @ (self.moving[:, :, None] * chosen)
+            result += (Z * Z * self.inverse_gaps_to(ranks)).sum(axis=-2)
         return result
 
 
@@ -146,6 +145,8 @@ def cautions(level: Level) -> tuple[str, ...]:
 
 def as_fields(field_gauss: ArrayLike) -> Array:
     """Check a field or an array of fields and return it as shape (n,)."""
+    if isinstance(field_gauss, float) and abs(field_gauss) <= LARGEST_FIELD_GAUSS:
+        return np.array([field_gauss])
     fields = np.atleast_1d(np.asarray(field_gauss, dtype=np.float64))
     if not np.all(np.abs(fields) <= LARGEST_FIELD_GAUSS):
         worst = float(fields[np.argmax(~(np.abs(fields) <= LARGEST_FIELD_GAUSS))])
@@ -190,9 +191,9 @@ def _closed_form_of_two(diagonal: Array, coupling: float) -> tuple[Array, Array]
 class Prepared:
     """What one block of given constants needs at every field, made once: all arrays read-only.
 
-    `still` is H at zero field (d, d), `zeeman` the diagonal of dH/dB there (d,), `square`
-    that of half of d2H/dB2; `steady` holds dH/dA, dH/dB_hfs, dH/dC
-    (3, d, d), `linear` the diagonals of d2H/dBdg_J and d2H/dBdg_I (2, d).
+    `still` is H at zero field (d, d), `zeeman` the diagonal of dH/dB there (d,), `square` that of half of d2H/dB2 and
+    `mixes` whether it is not zero; `steady` holds dH/dA, dH/dB_hfs, dH/dC (3, d, d), `linear` the diagonals of
+    d2H/dBdg_J and d2H/dBdg_I (2, d); `rest_mhz` is the zero-field energy of each rank.
     """
 
     block: Block
@@ -202,6 +203,8 @@ class Prepared:
     square: Array
     steady: Array
     linear: Array
+    mixes: bool
+    rest_mhz: tuple[float, ...]
 
 
 @lru_cache(maxsize=4096)
@@ -218,7 +221,9 @@ def prepared(constants: Constants, twice_m: int) -> Prepared:
     square = np.array([per_mJ.get(mJ, 0.0) for mJ in part.twice_mJ])
     for array in (steady, linear, still, zeeman, square):
         array.setflags(write=False)
-    return Prepared(part, ranked_F(constants, twice_m), still, zeeman, square, steady, linear)
+    ranked = ranked_F(constants, twice_m)
+    rest = tuple(zero_field_mhz(constants, F) for F in ranked)
+    return Prepared(part, ranked, still, zeeman, square, steady, linear, bool(square.any()), rest)
 
 
 def solve_block(constants: Constants, twice_m: int, fields: Array) -> Eigen:
