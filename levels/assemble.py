@@ -220,8 +220,7 @@ def assemble(data: DataFile) -> dict[int, Atom]:
         for mass_number, isotope in isotopes.items()
     }
     centroids, own = line_centroids(data, levels), own_centroids(data, levels)
-    core = {name: part.core.quantity() for name, part in data.polarisability.items() if part.core}
-    tail = {name: part.tail.quantity() for name, part in data.polarisability.items() if part.tail}
+    core, tail, static = (_polarisabilities(data, kind) for kind in ("core", "tail", "static"))
     atoms = {}
     for mass_number, isotope in isotopes.items():
         edges = {str(A): edges_of(data, own, A) for A in (mass_number, data.element.reference_isotope)}
@@ -230,5 +229,10 @@ def assemble(data: DataFile) -> dict[int, Atom]:
             line_record(name, line, found[line.lower], found[line.upper], centroids[mass_number].get(name))
             for name, line in data.lines.items()
         )
-        atoms[mass_number] = Atom(isotope, tuple(found.values()), lines, core, tail)
+        atoms[mass_number] = Atom(isotope, tuple(found.values()), lines, core, tail, static)
     return atoms
+
+
+def _polarisabilities(data: DataFile, kind: str) -> dict[str, Quantity]:
+    tables = {name: getattr(table, kind) for name, table in data.polarisability.items()}
+    return {name: in_unit(table.quantity(), "a0^3") for name, table in tables.items() if table is not None}

@@ -91,10 +91,15 @@ class Line:
 
 @dataclass(frozen=True, slots=True)
 class Atom:
-    """An isotope with all its levels and lines, in the order of the data file."""
+    """An isotope with all its levels and lines, in the order of the data file.
+
+    Polarisabilities are by level, scalar, in a0^3: of the core, of the levels above those of the file, and the whole
+    static one.
+    """
 
     isotope: Isotope
     levels: tuple[Level, ...] = ()
     lines: tuple[Line, ...] = ()
     core_polarisability: dict[str, Quantity] = field(default_factory=dict)
     tail_polarisability: dict[str, Quantity] = field(default_factory=dict)
+    static_polarisability: dict[str, Quantity] = field(default_factory=dict)

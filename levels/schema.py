@@ -131,10 +131,11 @@ class LineTable(Table):
 
 
 class PolarisabilityTable(Table):
-    """What a polarisability has beside the lines of the file."""
+    """What a level's scalar polarisability has beside the lines of the file, or the whole of it at zero frequency."""
 
     core: Polarisability | None = None
     tail: Polarisability | None = None
+    static: Polarisability | None = None
 
 
 class RuleException(Table):
