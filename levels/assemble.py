@@ -18,8 +18,16 @@ from levels.derive import (
     rate_of_dipole,
     rate_of_oscillator_strength,
 )
-from levels.frequencies import Centroid, Edge, edges_of, level_energy, line_centroids, own_centroids
-from levels.notation import MULTIPOLE_RANK, format_isotope, parse_component, parse_half
+from levels.frequencies import (
+    Centroid,
+    Edge,
+    edges_of,
+    level_energy,
+    line_centroids,
+    measured_components,
+    own_centroids,
+)
+from levels.notation import MULTIPOLE_RANK, format_isotope, parse_component, parse_half, parse_isotope
 from levels.published import Value
 from levels.quantity import (
     Quantity,
@@ -131,6 +139,7 @@ def line_record(name: str, table: LineTable, lower: Level, upper: Level, centroi
         induced=_induced(table, upper),
         centroid=frequency,
         centroid_isotope=centroid.isotope if centroid else "",
+        measured=measured_components(table, parse_isotope(upper.atom).mass_number or 0),
         wavelength=wavelength_of(frequency, table.photons) if frequency else None,
         einstein_A=rate,
         branching=branching,

@@ -18,8 +18,9 @@ from levels.blocks import block
 from levels.errors import OutsideValidity, UnknownName
 from levels.fieldgrid import on_grid
 from levels.notation import format_half, format_sublevel
+from levels.quantity import Quantity
 from levels.records import Line
-from levels.sensitivity import ENERGY, Spread, add_terms, movement, spread, terms_of
+from levels.sensitivity import ENERGY, SHIFT, Spread, add_terms, movement, spread, terms_of
 from levels.sublevels import (
     HZ_PER_MHZ,
     Constants,
@@ -42,8 +43,8 @@ STRENGTH_TOLERANCE = 1e-12
 class Component:
     """One component at one field, with standard uncertainties; frequencies in MHz, the field in gauss.
 
-    `frequency_mhz` is None when the line's centroid is not published. `strength_known` is False for lines that only a
-    field opens: their strength is not in this model.
+    `frequency_mhz` is None when neither the component nor the line's centroid is published. `strength_known` is False
+    for lines that only a field opens: their strength is not in this model.
     """
 
     line: Line
@@ -66,18 +67,25 @@ class Component:
         return self.offset_mhz - self.zero_field_offset_mhz
 
     @property
-    def frequency_uncertainty_mhz(self) -> float | None:
-        """Standard uncertainty of the frequency: that of the centroid and that of the offset in quadrature."""
-        centroid = self.line.centroid
-        offset = float(self.spread.uncertainty[ENERGY, 0, 0])
-        if centroid is None or centroid.uncertainty is None or np.isnan(offset):
-            return None
-        return float(np.hypot(centroid.uncertainty, offset))
+    def measured(self) -> Quantity | None:
+        """The zero-field frequency of this hyperfine component in MHz where it was measured itself."""
+        return measured_component(self.line, self.lower[0], self.upper[0])
 
     @property
     def frequency_mhz(self) -> float | None:
-        """The frequency to set a laser to, where the centroid is known."""
+        """The frequency to set a laser to: the measured component and the shift, else the centroid and the offset."""
+        if self.measured is not None:
+            return self.measured.value + self.shift_mhz
         return None if self.line.centroid is None else self.line.centroid.value + self.offset_mhz
+
+    @property
+    def frequency_uncertainty_mhz(self) -> float | None:
+        """Standard uncertainty of the frequency, both its parts in quadrature; None where either is unknown."""
+        start, which = (self.measured, SHIFT) if self.measured is not None else (self.line.centroid, ENERGY)
+        moved = float(self.spread.uncertainty[which, 0, 0])
+        if start is None or start.uncertainty is None or np.isnan(moved):
+            return None
+        return float(np.hypot(start.uncertainty, moved))
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -98,6 +106,39 @@ class Components:
     strength: Array
     zero_field_strength: tuple[Fraction, ...]
     strength_known: bool
+
+    @property
+    def frequency_mhz(self) -> Array | None:
+        """Absolute frequencies, shape (n, c); None without any published frequency.
+
+        A component that was measured itself counts from that measurement, the others from the line's centroid.
+        """
+        if self.line.centroid is None:
+            return None
+        frequency: Array = self.line.centroid.value + self.offset_mhz
+        for twice_F, twice_F_up, known in self.line.measured:
+            at = (self.lower_twice_F == twice_F) & (self.upper_twice_F == twice_F_up)
+            frequency[:, at] = known.value + self.shift_mhz[:, at]
+        return frequency
+
+
+def measured_component(line: Line, twice_F: int, twice_F_up: int) -> Quantity | None:
+    """Return the measured zero-field frequency in MHz of one hyperfine component, or None."""
+    return next((known for low, up, known in line.measured if (low, up) == (twice_F, twice_F_up)), None)
+
+
+def frequency_uncertainties_mhz(found: Components, offset: Array, shift: Array) -> Array:
+    """Return the standard uncertainties of the table's frequencies, NaN where unknown."""
+    line = found.line
+    result: Array = np.hypot(_stated(line.centroid), offset)
+    for twice_F, twice_F_up, known in line.measured:
+        at = (found.lower_twice_F == twice_F) & (found.upper_twice_F == twice_F_up)
+        result[..., at] = np.hypot(_stated(known), shift[..., at])
+    return result
+
+
+def _stated(quantity: Quantity | None) -> float:
+    return np.nan if quantity is None or quantity.uncertainty is None else quantity.uncertainty
 
 
 def both_constants(line: Line) -> tuple[Constants, Constants]:

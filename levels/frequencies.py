@@ -230,6 +230,18 @@ def line_centroids(data: DataFile, levels: Levels) -> dict[int, dict[str, Centro
     return result
 
 
+def measured_components(line: LineTable, isotope: int) -> tuple[tuple[int, int, Quantity], ...]:
+    """The components of one isotope that were measured themselves, as (2F, 2F', recommended frequency in MHz)."""
+    found: dict[tuple[int, int], Quantity] = {}
+    for entry in line.frequency:
+        if entry.isotope != isotope or entry.of in ("centroid", "average"):
+            continue
+        feature = parse_feature(entry.of)
+        if not feature.is_crossover:
+            found.setdefault(feature.components[0], in_mhz(entry))
+    return tuple((low, up, quantity) for (low, up), quantity in found.items())
+
+
 def _centroid(own: Mapping[Whose, Quantity], edges: list[Edge], line: LineTable, source: Whose) -> Quantity | None:
     if source in own:
         return own[source]

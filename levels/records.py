@@ -66,8 +66,9 @@ class Line:
 
     `rank` is the multipole rank (1 for E1 and M1, 2 for E2, 3 for E3). `centroid` is the frequency in MHz between the
     hyperfine centroids, `wavelength` the vacuum wavelength in nm that belongs to it. `einstein_A` is the partial
-    rate of this line in s-1, `branching` its fraction of the upper level's decays. `centroid_isotope` says whose
-    frequency it is: the isotope itself, or "natural" when only the element's average is known.
+    rate of this line in s-1, `branching` its fraction of the upper level's decays. `measured` are the components of
+    this isotope that were measured themselves, as (2F, 2F', frequency in MHz). `centroid_isotope` says whose frequency
+    the centroid's is: the isotope itself, or "natural" when only the element's average is known.
     """
 
     atom: str
@@ -82,6 +83,7 @@ class Line:
     induced: str = ""  # "hyperfine" or "magnetic field" where J and the multipole alone forbid the line
     centroid: Quantity | None = None
     centroid_isotope: str = ""
+    measured: tuple[tuple[int, int, Quantity], ...] = ()
     wavelength: Quantity | None = None
     einstein_A: Quantity | None = None
     branching: Quantity | None = None

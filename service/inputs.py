@@ -1,6 +1,7 @@
 """What an answer rests on: the curated constants of levels and lines that a computation used, with their names."""
 
 from levels.multiplet import caution
+from levels.notation import format_half
 from levels.quantity import Quantity
 from levels.records import Level, Line
 from levels.sublevels import cautions
@@ -21,9 +22,10 @@ def level_inputs(level: Level) -> Used:
 
 
 def line_inputs(line: Line) -> Used:
-    """The constants of a line's two levels and the frequency of its centroid."""
+    """The constants of a line's two levels, the frequency of its centroid and of components measured themselves."""
     centroid: Used = [] if line.centroid is None else [(f"centroid of {line.name}", line.centroid)]
-    return [*level_inputs(line.lower), *level_inputs(line.upper), *centroid]
+    measured = [(f"{format_half(F)}-{format_half(F_up)} of {line.name}", known) for F, F_up, known in line.measured]
+    return [*level_inputs(line.lower), *level_inputs(line.upper), *centroid, *measured]
 
 
 def level_warnings(level: Level, largest_field_gauss: float) -> list[str]:

@@ -3,13 +3,11 @@
 from collections.abc import Mapping
 from typing import Any
 
-import numpy as np
 from pydantic import Field
 
-from levels.components import Components, components
+from levels.components import Components, components, frequency_uncertainties_mhz
 from levels.notation import format_polarisation
-from levels.records import Line
-from levels.sensitivity import ENERGY
+from levels.sensitivity import ENERGY, SHIFT
 from levels.uncertainty import component_spread
 from service.answers import Answer, uncertainty_columns
 from service.context import Context
@@ -17,7 +15,7 @@ from service.formats import Column, Table
 from service.inputs import line_inputs, line_warnings
 from service.parameters import FieldGauss, Name, PolarisationName
 from service.question import Computed, Question
-from service.routes.shift import NO_CENTROID, NO_STRENGTH, NO_UNCERTAINTY
+from service.routes.shift import NO_CENTROID, NO_STRENGTH, no_frequency_spread
 from service.routes.sublevels import ORDER
 from service.schemas import Labels, MaybeNumbers, Numbers, Shape, Tabular, Texts
 
@@ -71,18 +69,15 @@ class ComponentsAnswered(Tabular):
     columns: ComponentColumns
 
 
-def frequency_columns(line: Line, offset_mhz: Any, sigma_mhz: Any) -> tuple[dict[str, Column], dict[str, str]]:
+def frequency_columns(found: Components, sigma_mhz: Any) -> tuple[dict[str, Column], dict[str, str]]:
     """The absolute frequencies with their uncertainties, and why one is missing."""
     names = ("frequency_THz", "frequency_uncertainty_THz")
-    nothing: Column = [None] * len(offset_mhz)
-    centroid = line.centroid
-    if centroid is None:
-        return dict.fromkeys(names, nothing), dict.fromkeys(names, NO_CENTROID)
-    frequency: Column = (centroid.value + offset_mhz) * 1e-6
-    if centroid.uncertainty is None:
-        return {names[0]: frequency, names[1]: nothing}, {names[1]: NO_UNCERTAINTY}
-    sigma, doubted = uncertainty_columns({names[1]: np.hypot(centroid.uncertainty, sigma_mhz) * 1e-6})
-    return {names[0]: frequency, **sigma}, doubted
+    frequency = found.frequency_mhz
+    if frequency is None:
+        return {name: [None] * len(found.q) for name in names}, dict.fromkeys(names, NO_CENTROID)
+    spread = frequency_uncertainties_mhz(found, sigma_mhz[ENERGY], sigma_mhz[SHIFT])
+    sigma, doubted = uncertainty_columns({names[1]: spread * 1e-6})
+    return {names[0]: frequency[0] * 1e-6, **sigma}, dict.fromkeys(doubted, no_frequency_spread(found.line))
 
 
 def label_columns(found: Components) -> dict[str, Column]:
@@ -106,7 +101,7 @@ def answer_components(context: Context, path: Mapping[str, str], asked: Componen
     found = components(line, asked.field, asked.polarisation)
     spread = component_spread(line, asked.field, asked.polarisation)
     sigma, doubted = uncertainty_columns(dict(zip(UNCERTAINTIES, spread.uncertainty[ORDER, 0], strict=True)))
-    frequencies, missing = frequency_columns(line, found.offset_mhz[0], spread.uncertainty[ENERGY, 0])
+    frequencies, missing = frequency_columns(found, spread.uncertainty[:, 0])
     missing = {**doubted, **missing}
     if not found.strength_known:
         missing["strength"] = NO_STRENGTH

@@ -35,7 +35,7 @@ OF_LEVEL = {
 }
 OF_LINE = {
     "offset_MHz": "offset_mhz",
-    "frequency_THz": "offset_mhz",
+    "frequency_THz": "frequency_mhz",
     "shift_MHz": "shift_mhz",
     "slope_MHz_per_G": "slope_mhz_per_gauss",
     "quadratic_Hz_per_G2": "quadratic_hz_per_gauss2",
@@ -155,7 +155,9 @@ def _of_line(context: Context, line: Line, asked: SweepAsked, fields: Array) -> 
         raise UnknownName("component", given, hint=f"{line.name} has no component between these sublevels")
     _check_size(context, fields.size * len(at) * (6 + len(names)))
     pieces = _pieces(fields, 5 * len(pairs), context.settings.max_seconds)
-    solved = [_taken(components(line, piece, asked.polarisation), OF_LINE, names, at) for piece in pieces]
+    # Without a published frequency the column is emptied below; the offsets only hold its place.
+    taken = OF_LINE if line.centroid is not None else {**OF_LINE, "frequency_THz": "offset_mhz"}
+    solved = [_taken(components(line, piece, asked.polarisation), taken, names, at) for piece in pieces]
     labels = [pairs[place] for place in at]
     columns: dict[str, Column] = {
         "field_G": np.repeat(fields, len(at)),
@@ -176,13 +178,13 @@ def _of_line(context: Context, line: Line, asked: SweepAsked, fields: Array) -> 
 
 
 def _complete(line: Line, columns: dict[str, Column]) -> dict[str, str]:
-    """Turn offsets into frequencies; empty what the catalogue or the model does not have, and say why."""
+    """Write frequencies in THz; empty what the catalogue or the model does not have, and say why."""
     missing: dict[str, str] = {}
     if "frequency_THz" in columns:
         if line.centroid is None:
             missing["frequency_THz"] = NO_CENTROID
         else:
-            columns["frequency_THz"] = (line.centroid.value + np.asarray(columns["frequency_THz"])) * 1e-6
+            columns["frequency_THz"] = np.asarray(columns["frequency_THz"]) * 1e-6
     if "strength" in columns and not strength_model(line):
         missing["strength"] = NO_STRENGTH
     for name in missing:

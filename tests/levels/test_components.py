@@ -365,3 +365,18 @@ def test_components_add_up_to_line_strengths(of: Line) -> None:
     J, J_up, I = of.lower.twice_J, of.upper.twice_J, of.lower.twice_I
     for (F, F_up), total in sums.items():
         assert total == line_strength(J, J_up, I, F, F_up, of.rank) * (F + 1) * Fraction(J_up + 1, J + 1)
+
+
+def test_a_measured_component_is_answered_from_its_measurement() -> None:
+    """Frequency and uncertainty of a component measured itself are the measurement's, moved by the field alone."""
+    measured = quantity(384228115.203, 0.001, "MHz")
+    placed = replace(RB87_D2, centroid=quantity(384230484.468, 0.5, "MHz"), measured=((4, 6, measured),))
+    at_rest = component(placed, (4, 4), (6, 6), 0.0)
+    assert (at_rest.frequency_mhz, at_rest.frequency_uncertainty_mhz) == (measured.value, measured.uncertainty)
+    moved, table = component(placed, (4, 4), (6, 6), 3.0), components(placed, 3.0)
+    assert moved.frequency_mhz == pytest.approx(measured.value + moved.shift_mhz, abs=1e-7)
+    row = int(np.flatnonzero((table.lower_twice_m == 4) & (table.upper_twice_m == 6))[0])
+    assert table.frequency_mhz is not None
+    assert table.frequency_mhz[0, row] == moved.frequency_mhz
+    other = component(placed, (4, 4), (4, 4), 0.0)
+    assert other.frequency_mhz == pytest.approx(384230484.468 + other.offset_mhz, abs=1e-7)
