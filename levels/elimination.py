@@ -24,11 +24,17 @@ from levels.bloch import (
     Complex,
     Indices,
     Triplets,
+    generator,
     index_table,
     jump_triplets,
+    reachable,
     real_triplets,
     to_complex,
+    to_real,
 )
+from levels.errors import OutsideValidity
+
+LARGEST_UNKNOWNS = 6000
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -62,18 +68,40 @@ def two_sets(bloch: Bloch) -> NDArray[np.bool_] | None:
     return upper
 
 
-def reduce(bloch: Bloch, upper: NDArray[np.bool_], pattern: NDArray[np.bool_]) -> Reduced:
-    """Eliminate the optical coherences."""
+def equations(bloch: Bloch) -> Reduced:
+    """Eliminate the optical coherences, where the light joins two sets; else keep everything in set A."""
+    pattern = reachable(bloch)
+    upper = two_sets(bloch)
+    if upper is None:
+        return _whole(bloch, pattern)
     B, A = np.flatnonzero(upper), np.flatnonzero(~upper)
-    same = upper[:, None] == upper[None, :]
-    table = index_table(pattern & same)
+    same = pattern & (upper[:, None] == upper[None, :])
+    table = index_table(same)
+    _check_size(table)
     V = bloch.coupling[np.ix_(B, A)]
     energy = bloch.energy[B][:, None] - bloch.energy[A][None, :]
     slowness = bloch.coherence_decay[np.ix_(B, A)] + 1j * energy
     K = np.divide(1.0, slowness, out=np.zeros_like(slowness), where=slowness != 0)
-    parts = (_own(bloch, same & pattern), *jump_triplets(bloch), *_exchange(V, K, A, B), *_loss(V, K, A, B, pattern))
+    parts = (_own(bloch, same), *jump_triplets(bloch), *_exchange(V, K, A, B), *_loss(V, K, A, B, pattern))
     rows, columns, values = real_triplets(parts, table)
     return Reduced(table, rows, columns, values, A, B, V, K)
+
+
+def _whole(bloch: Bloch, pattern: NDArray[np.bool_]) -> Reduced:
+    table = index_table(pattern)
+    _check_size(table)
+    matrix = generator(bloch, table).tocoo()
+    nothing = np.zeros((0, bloch.size), dtype=np.complex128)
+    rows, columns = matrix.row.astype(np.int64), matrix.col.astype(np.int64)
+    A, B = np.arange(bloch.size), np.zeros(0, dtype=np.int64)
+    return Reduced(table, rows, columns, matrix.data, A, B, nothing, nothing)
+
+
+def _check_size(table: Indices) -> None:
+    unknowns = int(table.max()) + 1
+    if unknowns > LARGEST_UNKNOWNS:
+        allowed = f"at most {LARGEST_UNKNOWNS} populations and coherences; rate equations or fewer levels would do"
+        raise OutsideValidity("beams", f"{unknowns} unknowns", allowed)
 
 
 def _own(bloch: Bloch, inside: NDArray[np.bool_]) -> Triplets:
@@ -129,3 +157,17 @@ def with_optical(reduced: Reduced, values: Array) -> Complex:
     rho[np.ix_(reduced.upper, reduced.lower)] = c
     rho[np.ix_(reduced.lower, reduced.upper)] = c.conj().T
     return rho
+
+
+def source(reduced: Reduced, rho: Complex) -> Array:
+    """Return the right side for the blocks when the whole equations are M y = rho: optical sources act through K.
+
+    c gains -K o rho_c, which the blocks feel as i V^+ (K o rho_c) + h.c. and -i (K o rho_c) V^+ + h.c.
+    """
+    A, B = reduced.lower, reduced.upper
+    through = 1j * reduced.response * rho[np.ix_(B, A)]
+    into_a, into_b = reduced.link.conj().T @ through, through @ reduced.link.conj().T
+    blocks = rho.copy()
+    blocks[np.ix_(A, A)] -= into_a + into_a.conj().T
+    blocks[np.ix_(B, B)] += into_b + into_b.conj().T
+    return to_real(blocks, reduced.table)

@@ -9,17 +9,15 @@ populations is returned, from the left and right null spaces: x = R (L^T R)^-1 L
 from dataclasses import dataclass, replace
 
 import numpy as np
-from numpy.typing import NDArray
 from scipy.linalg import lapack
 from scipy.sparse import csc_matrix
 from scipy.sparse.linalg import splu
 
-from levels.bloch import Array, Bloch, Complex, Indices, Jump, generator, index_table, reachable, to_complex, to_real
-from levels.elimination import Reduced, optical_part, reduce, two_sets, with_optical
+from levels.bloch import Array, Bloch, Complex, Indices, Jump, to_complex, to_real
+from levels.elimination import Reduced, equations, optical_part, with_optical
 from levels.errors import OutsideValidity
 
 DENSE_UNKNOWNS = 1500  # up to here LAPACK beats sparse LU, whose factors fill up
-LARGEST_UNKNOWNS = 6000
 SINGULAR = 1e-15  # reciprocal condition below which the equations are taken to have several solutions
 
 
@@ -63,40 +61,15 @@ def steady_state(bloch: Bloch, initial: Array) -> Steady:
 
     Leaks are closed (`closed`): the state is that of the atoms still there, and `lost_per_us` the rate of losing them.
     """
-    whole = closed(bloch)
-    pattern = reachable(whole)
-    upper = two_sets(whole)
-    if upper is None:
-        return _without_sets(whole, pattern, initial, bloch.lost)
-    reduced = reduce(whole, upper, pattern)
-    _check_size(reduced.size)
+    reduced = equations(closed(bloch))
     values = solve_with_trace(reduced.rows, reduced.columns, reduced.values, reduced.table)
     unique = values is not None
     if values is None:
         right, left = null_spaces(matrix_of(reduced.rows, reduced.columns, reduced.values, reduced.size))
-        overlap = left.T @ right + _optical_overlap(reduced, left, right)
+        overlap = overlaps(reduced, left, right)
         values = right @ np.linalg.solve(overlap, left.T @ to_real(np.diag(initial + 0j), reduced.table))
     rho = with_optical(reduced, values)
     return Steady(rho, unique, float(np.diag(rho).real @ bloch.lost), reduced.size)
-
-
-def _check_size(unknowns: int) -> None:
-    if unknowns > LARGEST_UNKNOWNS:
-        allowed = f"at most {LARGEST_UNKNOWNS} populations and coherences; rate equations or fewer levels would do"
-        raise OutsideValidity("beams", f"{unknowns} unknowns", allowed)
-
-
-def _without_sets(bloch: Bloch, pattern: NDArray[np.bool_], initial: Array, lost: Array) -> Steady:
-    table = index_table(pattern)
-    _check_size(int(table.max()) + 1)
-    matrix = generator(bloch, table).tocoo()
-    values = solve_with_trace(matrix.row.astype(np.int64), matrix.col.astype(np.int64), matrix.data, table)
-    unique = values is not None
-    if values is None:
-        right, left = null_spaces(matrix.toarray())
-        values = right @ np.linalg.solve(left.T @ right, left.T @ to_real(np.diag(initial + 0j), table))
-    rho = to_complex(values, table)
-    return Steady(rho, unique, float(np.diag(rho).real @ lost), values.size)
 
 
 def matrix_of(rows: Indices, columns: Indices, values: Array, size: int) -> Array:
@@ -154,19 +127,23 @@ def null_spaces(matrix: Array) -> tuple[Array, Array]:
     return right[null].T, left[:, null]
 
 
-def _optical_overlap(reduced: Reduced, left: Array, right: Array) -> Array:
-    """Add the optical coherences' share to the overlaps of left (conserved) and right (stationary) null vectors.
+def conserved_optical(reduced: Reduced, left: Array) -> list[Complex]:
+    """Return the optical part of the conserved quantity behind each left null vector.
 
-    A conserved quantity O has O_BA = i K* o (V O_AA - O_BB V), which is the stationary formula with -K*.
+    A conserved O has O_BA = i K* o (V O_AA - O_BB V), which is the stationary formula with -K*.
     """
-    table = reduced.table
-    overlap = np.zeros((left.shape[1], right.shape[1]))
+    diagonal = np.diag(reduced.table)
+    weight = np.full(left.shape[0], 0.5)  # Tr(O rho) counts Re and Im of each coherence twice
+    weight[diagonal[diagonal >= 0]] = 1.0
     mirrored = replace(reduced, response=-reduced.response.conj())
-    weight = np.full(left.shape[0], 0.5)
-    weight[table.diagonal()[table.diagonal() >= 0]] = 1.0
-    conserved = [optical_part(mirrored, to_complex(column * weight, table)) for column in left.T]
-    stationary = [optical_part(reduced, to_complex(column, table)) for column in right.T]
-    for row, O in enumerate(conserved):
+    return [optical_part(mirrored, to_complex(column * weight, reduced.table)) for column in left.T]
+
+
+def overlaps(reduced: Reduced, left: Array, right: Array) -> Array:
+    """Return the overlaps of conserved quantities with block vectors and the optical coherences they entail."""
+    overlap: Array = left.T @ right
+    stationary = [optical_part(reduced, to_complex(column, reduced.table)) for column in right.T]
+    for row, O in enumerate(conserved_optical(reduced, left)):
         for column, c in enumerate(stationary):
-            overlap[row, column] = 2 * np.sum(O.conj() * c).real
+            overlap[row, column] += 2 * np.sum(O.conj() * c).real
     return overlap
