@@ -18,6 +18,7 @@ TAGS = (
         "description": "What the catalogue holds: atoms, levels, lines and where each value comes from.",
     },
     {"name": "field", "description": "What a level or a line does in a magnetic field."},
+    {"name": "plan", "description": "Lock points, leaks and repumpers, and the settings of a frequency plan."},
     {"name": "algebra", "description": "Exact angular-momentum algebra."},
     {"name": "server", "description": "The server itself."},
 )

@@ -26,7 +26,7 @@ class Asked(Strict):
     """What every question takes."""
 
     format: Literal["json", "csv", "ndjson"] | None = Field(
-        None, description="representation of the answer; wins over the Accept header", examples=["csv"]
+        None, description="representation of the answer; wins over the Accept header", examples=["csv"], exclude=True
     )
 
 
@@ -71,6 +71,7 @@ class Question:
 
 PATH_PARAMETERS: Mapping[str, Any] = {
     "atom": Path(description="isotope and charge, as `87Rb`, `Rb-87`, `40Ca+` or `40Ca II`", examples=["87Rb"]),
+    "element": Path(description="element and charge, as `Rb`, `Ca+` or `Yb II`", examples=["Rb"]),
     "id": Path(description="a publication's key, as `sources` in any answer has it"),
 }
 

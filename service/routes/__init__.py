@@ -1,7 +1,19 @@
 """The questions that the service answers, one file for each capability."""
 
 from service.question import Question
-from service.routes import angular, catalogue, components, field, insensitive, shift, strengths, sublevels, sweep
+from service.routes import (
+    angular,
+    catalogue,
+    components,
+    features,
+    field,
+    insensitive,
+    profile,
+    shift,
+    strengths,
+    sublevels,
+    sweep,
+)
 
 QUESTIONS: tuple[Question, ...] = (
     *catalogue.QUESTIONS,
@@ -12,5 +24,7 @@ QUESTIONS: tuple[Question, ...] = (
     insensitive.QUESTION,
     field.QUESTION,
     sweep.QUESTION,
+    features.QUESTION,
+    profile.QUESTION,
     *angular.QUESTIONS,
 )
