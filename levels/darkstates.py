@@ -93,9 +93,9 @@ def lower_manifolds(drive: Drive, linewidths: float = RESONANT_WIDTHS) -> list[L
         part = structure.slice_of(level)
         couplings = [item for item in drive.couplings if item.lower == part]
         if couplings:
-            F = structure.twice_F[part]
-            for twice_F in np.unique(F).tolist():
-                found.append(_manifold(drive, level, twice_F, np.flatnonzero(F == twice_F), couplings, linewidths))
+            held = structure.twice_F[part]
+            for twice_F in np.unique(held).tolist():
+                found.append(_manifold(drive, level, twice_F, np.flatnonzero(held == twice_F), couplings, linewidths))
     return found
 
 

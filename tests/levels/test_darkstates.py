@@ -38,7 +38,7 @@ def test_counts_of_dark_states(twice_J, step, jones, direction):
 @pytest.mark.parametrize(("twice_J", "twice_J_up", "expected"), [(1, 1, 1), (3, 1, 2), (3, 3, 1), (2, 2, 1), (3, 5, 0)])
 @pytest.mark.parametrize("hand", ["right", "left"])
 def test_circular_light(twice_J, twice_J_up, expected, hand):
-    """Circular light leaves the outermost sublevels dark: m = J for J -> J, J and J - 1 for J -> J - 1 (same source)."""
+    """Circular light leaves outermost sublevels dark: m = J for J -> J, J and J - 1 for J -> J - 1 (same source)."""
     (manifold,) = manifolds(simple_atom(twice_J, twice_J_up), beam(simple_atom(twice_J, twice_J_up), light=hand))
     assert len(manifold.dark) == expected
     sign = 1 if hand == "right" else -1
