@@ -20,10 +20,10 @@ from levels.frequencies import (
     own_centroids,
     published_centroid,
     published_shift,
-    spread_of,
 )
 from levels.quantity import Quantity
 from levels.schema import LineTable
+from levels.sums import spread_of
 
 SIGMAS = 3.0
 # hyperfine repulsion moves centroids of odd isotopes, second-order field shifts bend the plot of heavy ones

@@ -1,18 +1,19 @@
 """Centroid frequencies of every line of every isotope, from what was published about any of them.
 
-In this order: the isotope's own published frequency, reduced to the centroid; another isotope's plus isotope shifts;
-the isotope's other lines and energies (Ritz combination); then the reference isotope's or the natural mixture's number,
-which the record says (`centroid_isotope`). Uncertainties add in quadrature; inputs shared by two terms of one sum
-(a hyperfine constant of a common level) are treated as independent, which overstates rather than hides.
+In this order: the isotope's own published frequency, reduced to the centroid; another isotope's plus isotope shifts, or
+the natural mixture's (see `mixture`); the isotope's other lines and energies (Ritz combination); then the reference
+isotope's or the natural mixture's number, which the record says (`centroid_isotope`). Uncertainties add in
+quadrature; inputs shared by two terms of one sum (a hyperfine constant of a common level) are treated as independent,
+which overstates rather than hides.
 """
 
 import heapq
-import math
 from collections.abc import Iterable, Mapping
 from dataclasses import dataclass, replace
 
 from levels import air
 from levels.blocks import hyperfine_weights
+from levels.mixture import NOTE, TOO_LITTLE, of_mixture
 from levels.notation import parse_feature
 from levels.published import LineFrequency, Shift
 from levels.quantity import (
@@ -21,12 +22,11 @@ from levels.quantity import (
     derived,
     frequency_of,
     in_unit,
-    parse_number,
-    resolution,
     wavenumber_of,
 )
 from levels.records import Level
 from levels.schema import DataFile, LineTable
+from levels.sums import signed_sum, spread_of
 
 Whose = int | str  # a mass number or "natural"
 Levels = Mapping[Whose, Mapping[str, Level]]
@@ -133,22 +133,11 @@ def _centroids_of(line: LineTable, reference: int, levels: Levels) -> dict[Whose
     shifts = {entry.isotope: published_shift(entry, line, levels) for entry in reversed(line.shift)}
     for isotope, shift in shifts.items():
         if reference not in known and shift is not None and isotope in known:
-            known[reference] = _sum([(known[isotope], 1), (shift, -1)], f"{isotope} minus its isotope shift")
+            known[reference] = signed_sum([(known[isotope], 1), (shift, -1)], f"{isotope} minus its isotope shift")
     for isotope, shift in shifts.items():
         if isotope is not None and isotope not in known and shift is not None and reference in known:
-            known[isotope] = _sum([(known[reference], 1), (shift, 1)], f"{reference} plus the isotope shift")
+            known[isotope] = signed_sum([(known[reference], 1), (shift, 1)], f"{reference} plus the isotope shift")
     return known
-
-
-def _sum(terms: Iterable[tuple[Quantity, int]], formula: str) -> Quantity:
-    parts = list(terms)
-    value = sum(sign * item.value for item, sign in parts)
-    spread = combine(*(item.uncertainty for item, _ in parts))
-    result = derived(value, spread, "MHz", formula, inputs=[item for item, _ in parts])
-    if spread is None:  # print no finer than the coarsest term, so that the digits still tell the resolution
-        place = math.floor(math.log10(2 * math.hypot(*(spread_of(item) for item, _ in parts))))
-        result = replace(result, text=f"{round(value, -place):.{max(0, -place)}f} MHz")
-    return result
 
 
 def edges_of(data: DataFile, centroids: Mapping[str, Mapping[Whose, Quantity]], isotope: Whose) -> list[Edge]:
@@ -163,18 +152,6 @@ def edges_of(data: DataFile, centroids: Mapping[str, Mapping[Whose, Quantity]], 
             energy = frequency_of(level.energy.quantity())
             edges.append(Edge(data.element.ground, name, energy, f"E({name})"))
     return edges
-
-
-def spread_of(quantity: Quantity) -> float:
-    """The standard uncertainty, or half the last printed digit where none is stated, in the quantity's unit."""
-    if quantity.uncertainty is not None:
-        return quantity.uncertainty
-    last_digit = abs(resolution(quantity.text))
-    number, _, text_unit = quantity.text.partition(" ")
-    text_value, _ = parse_number(number)
-    if text_unit == quantity.unit or text_value == 0:
-        return last_digit / 2
-    return abs(quantity.value * last_digit / text_value) / 2  # right for proportional and for reciprocal units
 
 
 def best_path(edges: Iterable[Edge], start: str, end: str, without: str = "") -> list[tuple[Edge, int]] | None:
@@ -201,13 +178,13 @@ def best_path(edges: Iterable[Edge], start: str, end: str, without: str = "") ->
     return None
 
 
-def path_sum(path: Iterable[tuple[Edge, int]]) -> Quantity:
+def pathsigned_sum(path: Iterable[tuple[Edge, int]]) -> Quantity:
     """The frequency in MHz that a chain of intervals adds up to."""
     steps = list(path)
     if len(steps) == 1 and steps[0][1] == 1:
         return steps[0][0].quantity
     formula = " ".join(f"{'+' if sign > 0 else '-'} {edge.label}" for edge, sign in steps).removeprefix("+ ")
-    return _sum([(edge.quantity, sign) for edge, sign in steps], formula)
+    return signed_sum([(edge.quantity, sign) for edge, sign in steps], formula)
 
 
 def line_centroids(data: DataFile, levels: Levels) -> dict[int, dict[str, Centroid]]:
@@ -217,17 +194,43 @@ def line_centroids(data: DataFile, levels: Levels) -> dict[int, dict[str, Centro
     edges: dict[Whose, list[Edge]] = {isotope: edges_of(data, own, isotope) for isotope in whose}
     edges["any"] = [edge for isotope in whose for edge in edges[isotope] if edge.label.startswith("E(")]
     reference = data.element.reference_isotope
+    shifted = {name: _by_shifts(data, line, levels, own[name], edges) for name, line in data.lines.items()}
     result: dict[int, dict[str, Centroid]] = {}
     for isotope in data.isotopes:
         result[isotope] = {}
         for name, line in data.lines.items():
+            if isotope not in own[name] and isotope in shifted[name]:
+                result[isotope][name] = shifted[name][isotope]
+                continue
             order: tuple[Whose, ...] = (isotope, reference, "natural", "any")
             for source in order:
                 found = _centroid(own[name], edges[source], line, source)
                 if found:
-                    result[isotope][name] = _told(found, isotope, source)
+                    has_shift = any(entry.isotope == isotope for entry in line.shift)
+                    result[isotope][name] = _told(found, isotope, source, has_shift)
                     break
     return result
+
+
+def _by_shifts(
+    data: DataFile,
+    line: LineTable,
+    levels: Levels,
+    own: Mapping[Whose, Quantity],
+    edges: Mapping[Whose, list[Edge]],
+) -> dict[int, Centroid]:
+    """What isotope shifts say of isotopes where no isotope's own frequency of the line is published."""
+    found = {entry.isotope: published_shift(entry, line, levels) for entry in reversed(line.shift)}
+    shifts = {isotope: shift for isotope, shift in found.items() if isotope is not None and shift is not None}
+    reference = data.element.reference_isotope
+    base = _centroid(own, edges[reference], line, reference) if shifts else None
+    if base:
+        formula = f"{reference} plus the isotope shift"
+        return {A: Centroid(signed_sum([(base, 1), (shift, 1)], formula), str(A)) for A, shift in shifts.items()}
+    natural = _centroid(own, edges["natural"], line, "natural") if shifts else None
+    abundances = {A: in_unit(table.abundance.quantity(), "1") for A, table in data.isotopes.items() if table.abundance}
+    mixed = of_mixture(natural, shifts, abundances, reference) if natural else {}
+    return {isotope: Centroid(quantity, str(isotope), NOTE) for isotope, quantity in mixed.items()}
 
 
 def measured_components(line: LineTable, isotope: int) -> tuple[tuple[int, int, Quantity], ...]:
@@ -246,19 +249,20 @@ def _centroid(own: Mapping[Whose, Quantity], edges: list[Edge], line: LineTable,
     if source in own:
         return own[source]
     path = best_path(edges, line.lower, line.upper)
-    return path_sum(path) if path else None
+    return pathsigned_sum(path) if path else None
 
 
-def _told(quantity: Quantity, isotope: int, source: Whose) -> Centroid:
+def _told(quantity: Quantity, isotope: int, source: Whose, has_shift: bool) -> Centroid:
     if source == isotope:
         return Centroid(quantity, str(isotope))
     if source == "any":
         return Centroid(quantity, "natural", "difference of energies that belong to different isotopes")
     owner = "the natural mixture" if source == "natural" else f"mass number {source}"
-    return Centroid(quantity, str(source), f"frequency of {owner}: this isotope's own is not published")
+    why = TOO_LITTLE if has_shift and source == "natural" else ""
+    return Centroid(quantity, str(source), f"frequency of {owner}: this isotope's own is not published{why}")
 
 
 def level_energy(data: DataFile, edges: list[Edge], name: str) -> Quantity | None:
     """The energy in cm-1 above the ground level that lines add up to, for a level whose energy is not tabulated."""
     path = best_path(edges, data.element.ground, name)
-    return wavenumber_of(path_sum(path)) if path else None
+    return wavenumber_of(pathsigned_sum(path)) if path else None
