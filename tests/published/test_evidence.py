@@ -16,7 +16,6 @@ from tests.published.ledger import (
     Row,
     disagreement,
     every_value,
-    nuclear_spin,
     nuclear_support,
     rows,
 )
@@ -55,15 +54,6 @@ def test_every_row_of_the_ledgers_is_of_a_value(book: Catalogue) -> None:
     assert relations <= {relation.split(" ")[0] for relation in RELATIONS}
     wrong = [disagreement(values[key], row) for key, entries in LEDGER.items() for row in entries]
     assert [text for text in wrong if text] == []
-
-
-@pytest.mark.parametrize("species", SPECIES)
-def test_every_spin_is_the_evaluated_one(species: str, book: Catalogue) -> None:
-    """Nuclear spins are those of NUBASE2020 (as mendeleev has them)."""
-    data = book.elements[species]
-    symbol = data.element.symbol
-    found = {number: isotope.spin for number, isotope in data.isotopes.items()}
-    assert found == {number: str(nuclear_spin(symbol, number)) for number in data.isotopes}
 
 
 def _changed(text: str, place: int, step: int = 1) -> str:
