@@ -5,7 +5,7 @@ from collections.abc import Callable
 from levels.catalogue import Catalogue
 from levels.constants import G_S, MU_B_MHZ_PER_GAUSS
 from levels.multiplet import second_order
-from tests.published.checks.table import FOUND, MEMORY, Check, between, gap, half, slope_per_m, still_point
+from tests.published.checks.table import FOUND, MEMORY, Check, Label, between, gap, half, slope_per_m, still_point
 
 RB_PAIR = ((2, -2), (4, 2))
 BE_PAIR = ((4, 0), (2, 2))
@@ -22,7 +22,7 @@ def splitting_hz(book: Catalogue, atom: str, level: str, twice_F: int, twice_F_u
     return abs(gap(book, atom, level, (twice_F, twice_m), (twice_F_up, twice_m)).difference_mhz) * 1e6
 
 
-def clock_quadratic(atom: str, lower: str, low: tuple[int, int], upper: str, up: tuple[int, int]) -> Callable[[Catalogue], float]:
+def clock_quadratic(atom: str, lower: str, low: Label, upper: str, up: Label) -> Callable[[Catalogue], float]:
     return lambda book: between(book, atom, lower, low, upper, up).quadratic_hz_per_gauss2
 
 
