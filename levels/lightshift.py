@@ -1,4 +1,4 @@
-"""Light shifts of the sublevels of one level: the full second-order operator, and the response of one sublevel.
+"""Light shifts of the sublevels of one level: the full second-order operator in a field.
 
 For light E(t) = E0 Re(eps e^(-i omega t)) the operator on the sublevels a, b of a level is, summed over every
 sublevel o that an electric-dipole line of the book joins to it,
@@ -6,22 +6,26 @@ sublevel o that an electric-dipole line of the book joins to it,
     H_ab = -(E0^2/4h) sum_o [ <a|eps*.d|o><o|eps.d|b> / (D_o - nu) + <a|eps.d|o><o|eps*.d|b> / (D_o + nu) ]
 
 with D_o = (E_o - E_a)/h, which is the mean over a and b off the diagonal. Hyperfine and Zeeman energies of both levels
-are kept. eps.d = sum_q c_q d_q, where c_q drives m -> m + q: c_q = (-1)^q eps_-q. Core and tail add a common scalar.
-Neglected: saturation, so the light must be many linewidths and Rabi frequencies from every line.
-Cohen-Tannoudji, Dupont-Roc, Grynberg, Atom-Photon Interactions (1992); Le Kien et al., Eur. Phys. J. D 67, 92 (2013).
+are kept. eps.d = sum_q c_q d_q, where c_q drives m -> m + q (`geometry`). The remainder (core and levels beyond the
+book) adds a common scalar. Neglected: saturation, so the light must be many linewidths and Rabi frequencies from every
+line. Cohen-Tannoudji, Dupont-Roc, Grynberg, Atom-Photon Interactions (1992); Le Kien et al., Eur. Phys. J. D 67, 92
+(2013).
 """
 
-from collections.abc import Iterable, Sequence
-from dataclasses import dataclass
+from collections.abc import Sequence
+from dataclasses import dataclass, replace
 
 import numpy as np
-from numpy.typing import ArrayLike, NDArray
+from numpy.typing import NDArray
 
 from levels.blocks import block_ms
 from levels.components import amplitudes
-from levels.constants import EA0, EPS0, MHZ_NM, POLARISABILITY_SI, C, H
-from levels.errors import OutsideValidity, UnknownName
-from levels.polarisability import signed_frequency_mhz, usable
+from levels.constants import EA0, EPS0, HARTREE_MHZ, MHZ_NM, MU_B_MHZ_PER_GAUSS, POLARISABILITY_SI, C, H
+from levels.errors import NotPublished, OutsideValidity
+from levels.geometry import axes_of, factors, polarisation_vector
+from levels.jones import elliptical
+from levels.partners import Partners, dipole_of, other_end, signed_frequency_mhz
+from levels.polarisability import clearance_mhz
 from levels.quantity import Quantity
 from levels.records import Level, Line
 from levels.sublevels import Eigen, as_fields, constants_of, labels_of, solve_block
@@ -30,7 +34,8 @@ Array = NDArray[np.float64]
 Complex = NDArray[np.complex128]
 Label = tuple[int, int]
 QS = (-1, 0, 1)
-CLOSEST_MHZ = 1.0
+STAND_IN_MHZ = 1e-6  # a splitting that orders the F of a level whose own is not published
+LARGEST_INTENSITY = 1e12  # mW/cm2; far beyond it an atom ionises
 
 
 @dataclass(frozen=True, slots=True)
@@ -52,20 +57,53 @@ class Light:
         minus, none, plus = (np.conj(c) for c in self.drive)
         return -plus, none, -minus
 
+    @property
+    def fractions(self) -> tuple[float, float, float]:
+        """The |c_q|^2."""
+        return abs(self.drive[0]) ** 2, abs(self.drive[1]) ** 2, abs(self.drive[2]) ** 2
 
-def field_amplitude_squared(intensity_mw_per_cm2: float) -> float:
-    """Compute E0^2 in (V/m)^2 from the intensity of a travelling wave, I = c eps0 E0^2 / 2."""
-    return 2 * intensity_mw_per_cm2 * 10 / (C * EPS0)
+    @property
+    def circularity(self) -> float:
+        """The degree of circularity along the field, from -1 (pure sigma-) to 1 (pure sigma+)."""
+        return self.fractions[2] - self.fractions[0]
+
+
+def drive_of(beam_angle_deg: float, ellipticity_deg: float, azimuth_deg: float) -> tuple[complex, complex, complex]:
+    """Compute c_q of a beam at an angle to the field's axis z.
+
+    Ellipticity runs from -45 to 45 degrees (helicity -1 to 1); the azimuth of the ellipse's long axis counts from the
+    plane of beam and field.
+
+    >>> [round(abs(c) ** 2, 6) for c in drive_of(90.0, 0.0, 0.0)]
+    [0.0, 1.0, 0.0]
+    """
+    angle = np.radians(beam_angle_deg)
+    if not np.isfinite(angle):
+        raise OutsideValidity("beam_angle", beam_angle_deg, "a finite angle in degrees")
+    direction = np.array([np.sin(angle), 0.0, np.cos(angle)])
+    across = np.array([-np.cos(angle), 0.0, np.sin(angle)])
+    vector = polarisation_vector(direction, list(elliptical(ellipticity_deg, azimuth_deg)), across)
+    minus, none, plus = (complex(c) for c in factors(direction, vector, axes_of((0.0, 0.0, 0.0))))
+    return minus, none, plus
 
 
 def scale_mhz2(intensity_mw_per_cm2: float) -> float:
-    """Compute (e a0 E0 / h)^2 / 4 in MHz^2: the shift is minus this, times d^2 in (e a0)^2, over a detuning in MHz."""
-    return float((EA0 / H) ** 2 * field_amplitude_squared(intensity_mw_per_cm2) / 4 * 1e-12)
+    """Compute (e a0 E0 / 2h)^2 in MHz^2: the shift is minus this, times d^2 in (e a0)^2, over a detuning in MHz.
+
+    The intensity is that of a travelling wave, I = c eps0 E0^2 / 2.
+    """
+    return float((EA0 / H) ** 2 * 2 * intensity_mw_per_cm2 * 10 / (C * EPS0) / 4 * 1e-12)
 
 
-def scalar_shift_mhz(polarisability_a03: float, intensity_mw_per_cm2: float) -> float:
-    """Compute the shift -alpha E0^2/4h in MHz of a scalar polarisability in a0^3."""
-    energy = polarisability_a03 * POLARISABILITY_SI * field_amplitude_squared(intensity_mw_per_cm2) / 4
+def shift_of(polarisability_a03: float, intensity_mw_per_cm2: float = 1.0) -> float:
+    """Compute the shift -alpha E0^2/4h in MHz of a polarisability in a0^3.
+
+    >>> round(shift_of(1.0) * 1e6, 6)  # Hz in 1 mW/cm2
+    -0.046876
+    """
+    if not 0 <= intensity_mw_per_cm2 <= LARGEST_INTENSITY:
+        raise OutsideValidity("intensity", intensity_mw_per_cm2, f"from 0 to {LARGEST_INTENSITY:g} mW/cm2")
+    energy = polarisability_a03 * POLARISABILITY_SI * intensity_mw_per_cm2 * 10 / (2 * C * EPS0)
     return float(-energy / H * 1e-6)
 
 
@@ -88,14 +126,33 @@ def manifold(level: Level, field_gauss: float) -> Manifold:
     return Manifold(level, tuple(labels), energy, blocks)
 
 
+def solvable(level: Level) -> tuple[Level, tuple[str, ...]]:
+    """Return a level at the far end of a line with zero for the constants that are not published, and their names.
+
+    Its own splittings matter only where the light is near the line.
+    """
+    missing = []
+    nothing, ordering = (Quantity(value, None, "", "", "", "computed") for value in (0.0, STAND_IN_MHZ))
+    if level.A is None and level.twice_J and level.twice_I:
+        missing.append("A")
+        level = replace(level, A=ordering, B=None, C=None)
+    if level.g_J is None and level.twice_J:
+        missing.append("g_J")
+        level = replace(level, g_J=nothing)
+    if level.g_I is None and level.twice_I:
+        missing.append("g_I")
+        level = replace(level, g_I=nothing)
+    return level, tuple(missing)
+
+
 def dipole_elements(line: Line, here: Manifold, there: Manifold) -> Array:
     """Build <o|d_q|a> in e a0 between the sublevels o of the other level and a of this one, shape (3, o, a).
 
-    q = m_o - m_a is the first index in the order of `QS`; the line's reduced element must be known.
+    q = m_o - m_a is the first index in the order of `QS`.
     """
     ours_is_lower = line.lower.name == here.level.name
     low, up = (here, there) if ours_is_lower else (there, here)
-    scale = (line.reduced_dipole.value if line.reduced_dipole else 0.0) / np.sqrt(line.upper.twice_J + 1)
+    scale = dipole_of(line) / np.sqrt(line.upper.twice_J + 1)
     elements = np.zeros((3, len(there.labels), len(here.labels)))
     rows = {label: k for k, label in enumerate(there.labels)}
     columns = {label: k for k, label in enumerate(here.labels)}
@@ -126,107 +183,83 @@ class Coupled:
     gap_mhz: Array
 
 
-def couple(level: Level, lines: Iterable[Line], field_gauss: float) -> tuple[Manifold, list[Coupled], tuple[str, ...]]:
-    """Solve a level and everything its lines join it to; also the names of lines left out for want of a constant."""
-    here = manifold(level, field_gauss)
-    good, left_out = usable(level, lines)
+def couple(partners: Partners, field_gauss: float) -> tuple[Manifold, list[Coupled]]:
+    """Solve a level and everything its lines join it to."""
+    here = manifold(partners.level, field_gauss)
     coupled = []
-    for line in good:
-        there = manifold(line.upper if line.lower.name == level.name else line.lower, field_gauss)
-        gap = signed_frequency_mhz(level, line) + there.energy_mhz[:, None] - here.energy_mhz[None, :]
+    for line in partners.lines:
+        there = manifold(solvable(other_end(partners.level, line))[0], field_gauss)
+        gap = signed_frequency_mhz(partners.level, line) + there.energy_mhz[:, None] - here.energy_mhz[None, :]
         coupled.append(Coupled(line, there, dipole_elements(line, here, there), gap))
-    return here, coupled, left_out
+    return here, coupled
 
 
-def _off_resonance(gap: Array, light_mhz: float, line: Line) -> None:
-    closest = float(np.min(np.abs(np.abs(gap) - light_mhz)))
-    if closest < CLOSEST_MHZ:
-        raise OutsideValidity(
-            "wavelength",
-            MHZ_NM / light_mhz,
-            f"{closest:.3g} MHz from a component of {line.name}; the light must be far off",
-        )
+def check_distance(coupled: Sequence[Coupled], light_mhz: float) -> None:
+    """Refuse light that is within a few natural widths of a component."""
+    for part in coupled:
+        closest = float(np.min(np.abs(np.abs(part.gap_mhz) - light_mhz)))
+        if closest < clearance_mhz(part.line):
+            allowed = f"{closest:.3g} MHz from a component of {part.line.name}; at least {clearance_mhz(part.line):.3g}"
+            raise OutsideValidity("wavelength", MHZ_NM / light_mhz, f"{allowed} MHz off, where the light only shifts")
 
 
 def operator(here: Manifold, coupled: Sequence[Coupled], light: Light, scalar_a03: float = 0.0) -> Complex:
     """Build the light-shift operator in MHz between the sublevels of a level at a field, shape (s, s), Hermitian.
 
-    `scalar_a03` is the polarisability of core and tail, common to all sublevels.
+    `scalar_a03` is the polarisability of the remainder, common to all sublevels.
     """
     nu, size = light.frequency_mhz, len(here.labels)
+    check_distance(coupled, nu)
     total = np.zeros((size, size), dtype=np.complex128)
     for part in coupled:
-        _off_resonance(part.gap_mhz, nu, part.line)
         for drive, turning in ((light.drive, -nu), (light.counter_drive, nu)):
             V = np.tensordot(np.array(drive), part.elements, 1)
             weighted = V / (part.gap_mhz + turning)
             total += (weighted.conj().T @ V + V.conj().T @ weighted) / 2
-    shift = -scale_mhz2(light.intensity_mw_per_cm2) * total
-    shift += scalar_shift_mhz(scalar_a03, light.intensity_mw_per_cm2) * np.eye(size)
+    total += scalar_a03 / HARTREE_MHZ * np.eye(size)
+    shift: Complex = -scale_mhz2(light.intensity_mw_per_cm2) * total
     return shift
 
 
 @dataclass(frozen=True, slots=True, eq=False)
-class Response:
-    """The diagonal shift of one sublevel as a function of wavelength and polarisation.
+class Dressed:
+    """The sublevels under light: H and operator together, in the order of the manifold's labels.
 
-    shift / scale_mhz2 = -sum_i |c_q(i)|^2 weight_i / (pole_i - nu), with poles in MHz (negative ones are the counter-
-    rotating terms) and weights in (e a0)^2; `constant_a03` is the scalar of core and tail.
+    Each state is matched with the bare sublevel it resembles; `overlap` is |<bare|state>|^2. `energy_mhz` counts from
+    the level's centroid, `shift_mhz` from the bare sublevel.
     """
 
-    label: Label
-    q: NDArray[np.int64]
-    pole_mhz: Array
-    weight: Array
-    line: tuple[str, ...]
-    constant_a03: float
+    energy_mhz: Array
+    shift_mhz: Array
+    overlap: Array
 
-    def shift_mhz(self, light_mhz: ArrayLike, fractions: ArrayLike, intensity_mw_per_cm2: float = 1.0) -> Array:
-        """Evaluate the shift at n light frequencies for |c_q|^2 of shape (3,) or (n, 3), in MHz."""
-        nu = np.atleast_1d(np.asarray(light_mhz, dtype=np.float64))
-        share = np.broadcast_to(np.asarray(fractions, dtype=np.float64), (nu.size, 3))
-        total = np.zeros(nu.size)
-        for q in QS:
-            chosen = self.q == q
-            total += share[:, q + 1] * (self.weight[chosen] / (self.pole_mhz[chosen] - nu[:, None])).sum(axis=1)
-        shift: Array = -scale_mhz2(intensity_mw_per_cm2) * total
-        return shift + scalar_shift_mhz(self.constant_a03, intensity_mw_per_cm2)
-
-    def slope_per_mhz(self, light_mhz: float, fractions: Sequence[float], intensity_mw_per_cm2: float = 1.0) -> float:
-        """Evaluate how the shift changes with the light's frequency, MHz per MHz."""
-        share = np.asarray(fractions)[self.q + 1]
-        total = float((share * self.weight / (self.pole_mhz - light_mhz) ** 2).sum())
-        return -scale_mhz2(intensity_mw_per_cm2) * total
+    def ambiguous(self) -> NDArray[np.bool_]:
+        """Tell the sublevels whose label no longer says much: another bare sublevel may weigh as much."""
+        return self.overlap < 0.5
 
 
-def response(here: Manifold, coupled: Sequence[Coupled], label: Label, scalar_a03: float = 0.0) -> Response:
-    """Collect the poles and weights of one sublevel (2F, 2m)."""
-    if label not in here.labels:
-        raise UnknownName("sublevel", str(label), hint=f"{here.level.name} has no such F and m")
-    column = here.labels.index(label)
-    q_all, poles, weights, names = [], [], [], []
-    for part in coupled:
-        for q in QS:
-            rows = np.nonzero(part.elements[q + 1, :, column])[0]
-            square = part.elements[q + 1, rows, column] ** 2
-            gap = part.gap_mhz[rows, column]
-            # |c'_q|^2 = |c_-q|^2, and w/(D + nu) = -w/(-D - nu).
-            for sign, owner in ((1, q), (-1, -q)):
-                q_all.append(np.full(rows.size, owner))
-                poles.append(sign * gap)
-                weights.append(sign * square)
-                names += [part.line.name] * rows.size
-    empty = np.empty(0)
-    return Response(
-        label,
-        np.concatenate(q_all).astype(np.int64) if q_all else empty.astype(np.int64),
-        np.concatenate(poles) if poles else empty,
-        np.concatenate(weights) if weights else empty,
-        tuple(names),
-        scalar_a03,
-    )
+def dressed(here: Manifold, shift: Complex) -> Dressed:
+    """Diagonalise the sublevels' energies and the light-shift operator together."""
+    from scipy.optimize import linear_sum_assignment
+
+    energies, states = np.linalg.eigh(np.diag(here.energy_mhz) + shift)
+    weight = np.abs(states) ** 2
+    bare, which = linear_sum_assignment(-weight)
+    energy = energies[which]
+    return Dressed(energy, energy - here.energy_mhz[bare], weight[bare, which])
 
 
-def core_and_tail(core: Quantity | None, tail: Quantity | None) -> float:
-    """Add what is published of the core's and the higher levels' scalar polarisability, in a0^3."""
-    return sum(part.value for part in (core, tail) if part is not None)
+def fictitious_field_gauss(level: Level, vector_a03: float, light: Light) -> Array:
+    """Compute the magnetic field (x, y, z in gauss, z along the true field) that acts on J as the vector shift does.
+
+    B = alpha_v/(8 muB g_J J) i (E* x E), Le Kien et al. (2013): the vector shift is muB g_J J.B/h. The frame is that of
+    `drive_of`: the beam in the plane of x and z.
+    """
+    if level.g_J is None or level.twice_J == 0 or level.g_J.value == 0:
+        raise NotPublished("g_J", f"{level.atom} {level.name}", "a level with J = 0 has no vector shift")
+    minus, none, plus = light.drive
+    eps = np.array([(minus - plus) / np.sqrt(2), (minus + plus) / (1j * np.sqrt(2)), none])
+    turning = (1j * np.cross(eps.conj(), eps)).real
+    per_J = shift_of(vector_a03, light.intensity_mw_per_cm2) / level.twice_J  # MHz per unit of J along -turning
+    field: Array = -per_J / (MU_B_MHZ_PER_GAUSS * level.g_J.value) * turning
+    return field

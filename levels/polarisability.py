@@ -1,4 +1,4 @@
-"""Scalar, vector and tensor polarisability of a level, summed over the book's electric-dipole lines.
+"""Scalar, vector and tensor polarisability of a level, or of one of its hyperfine levels F, summed over its lines.
 
 With omega the light's angular frequency and omega_k that of a line, signed (negative where the other level lies below),
 the sum over lines, counter-rotating term included, is
@@ -8,12 +8,14 @@ the sum over lines, counter-rotating term included, is
     scalar = a_0 / sqrt(3(2J+1)),  vector = -sqrt(2J/((J+1)(2J+1))) a_1,
     tensor = -sqrt(2J(2J-1)/(3(J+1)(2J+1)(2J+3))) a_2
 
-Le Kien, Schneeweiss, Rauschenbeutel, Eur. Phys. J. D 67, 92 (2013). All in atomic units (a0^3). The shift of a sublevel
-in light of amplitude E is then -(E^2/4)[scalar + C vector m/2J + D tensor (3m^2 - J(J+1))/2J(2J-1)] with C the degree
-of circularity and D = (3|eps_z|^2 - 1)/2. The formula stops where the light is within some widths of a line.
+Le Kien, Schneeweiss, Rauschenbeutel, Eur. Phys. J. D 67, 92 (2013). For a hyperfine level J becomes F, the sum runs
+over the F' of each line at their own frequencies, and |<F'||d||F>|^2 = (2F+1)(2F'+1) {J F I; F' J' 1}^2 |<J'||d||J>|^2.
+All in atomic units (a0^3). The shift of a sublevel in light of amplitude E is then -(E^2/4)[scalar + C vector m/2F +
+D tensor (3m^2 - F(F+1))/F(2F-1)] with C the degree of circularity along the field and D = (3|eps_z|^2 - 1)/2. Numbers
+are NaN where the light is so close to a line that the formula stops: within its hyperfine structure (for a whole level)
+or `NEAREST_WIDTHS` natural widths.
 """
 
-from collections.abc import Iterable
 from dataclasses import dataclass
 from functools import lru_cache
 
@@ -21,53 +23,51 @@ import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
 from levels.angular import six_j
+from levels.blocks import hyperfine_shift
 from levels.constants import HARTREE_MHZ, MHZ_NM
-from levels.errors import NotPublished, OutsideValidity
-from levels.quantity import Quantity
+from levels.errors import OutsideValidity, UnknownName
+from levels.notation import format_half
+from levels.partners import (
+    SCALAR,
+    Doubt,
+    Partners,
+    Weighing,
+    dipole_of,
+    doubt_of,
+    other_end,
+    remainder_terms,
+    signed_frequency_mhz,
+    strength_terms,
+)
 from levels.records import Level, Line
 
 Array = NDArray[np.float64]
 RANKS = (0, 1, 2)
-
-
-@dataclass(frozen=True, slots=True, eq=False)
-class Share:
-    """What one line adds: (3, n) numbers in a0^3 for scalar, vector, tensor, and their standard uncertainty."""
-
-    line: Line
-    other: str
-    numbers: Array
-    uncertainty: Array | None
+NEAREST_WIDTHS = 5.0  # there the shift is wrong by (width/2 detuning)^2 = 1 %
+NEAREST_MHZ = 0.001
+SHORTEST_NM, LONGEST_NM = 50.0, 1e6
 
 
 @dataclass(frozen=True, slots=True, eq=False)
 class Polarisability:
-    """Polarisability of one level at n wavelengths, (3, n) in a0^3, and what its sum is made of.
+    """Polarisability of one level (or of one F, doubled in `twice_F`) at n wavelengths: (3, n) in a0^3.
 
-    `uncertainty` joins the stated ones of strengths, core and tail; `unstated` names the inputs without one and
-    `left_out` the lines that the book has without a strength or frequency. Lines that the book does not have at all are
-    left out too, and so is the core where none is published: then `complete` is False.
+    Rows are scalar, vector, tensor. `shares` (lines, 3, n) is what each line of `partners` adds, `doubts` holds the
+    uncertainties of the three rows. `close` marks wavelengths at which the formula stops (numbers NaN).
     """
 
-    level: Level
+    partners: Partners
+    twice_F: int | None
     wavelength_nm: Array
     numbers: Array
-    uncertainty: Array
-    shares: tuple[Share, ...]
-    core: Quantity | None
-    tail: Quantity | None
-    unstated: tuple[str, ...]
-    left_out: tuple[str, ...]
-
-    @property
-    def complete(self) -> bool:
-        """Whether core and tail were published, so that nothing large is missing by construction."""
-        return self.core is not None and self.tail is not None
+    shares: Array
+    doubts: tuple[Doubt, Doubt, Doubt]
+    close: NDArray[np.bool_]
 
 
-@lru_cache(maxsize=1024)
+@lru_cache(maxsize=4096)
 def rank_weights(twice_J: int, twice_J_other: int) -> tuple[float, float, float]:
-    """Compute the factors that take |d|^2 (1/(w_k - w) +- 1/(w_k + w)) to scalar, vector and tensor shares."""
+    """Compute the factors that take |d|^2 R_K to the scalar, vector and tensor polarisability."""
     J = twice_J / 2
     ends = (
         1 / np.sqrt(3 * (2 * J + 1)),
@@ -82,80 +82,105 @@ def rank_weights(twice_J: int, twice_J_other: int) -> tuple[float, float, float]
     return weights[0], weights[1], weights[2]
 
 
-def signed_frequency_mhz(level: Level, line: Line) -> float:
-    """Return the line's frequency as seen from a level: positive upwards, negative downwards."""
-    if line.centroid is None:
-        raise NotPublished("frequency", f"{line.atom} {line.name}")
-    return line.centroid.value if line.lower.name == level.name else -line.centroid.value
-
-
-def usable(level: Level, lines: Iterable[Line]) -> tuple[list[Line], tuple[str, ...]]:
-    """Split the electric-dipole lines of a level into those with strength and frequency, and the names of the rest."""
-    good, left_out = [], []
-    for line in lines:
-        if level.name in (line.lower.name, line.upper.name) and line.multipole == "E1" and not line.induced:
-            if line.reduced_dipole is None or line.centroid is None:
-                left_out.append(line.name)
-            else:
-                good.append(line)
-    return good, tuple(left_out)
+@lru_cache(maxsize=4096)
+def hyperfine_share(twice_J: int, twice_J_other: int, twice_I: int, twice_F: int, twice_F_other: int) -> float:
+    """Compute |<F'||d||F>|^2 / |<J'||d||J>|^2."""
+    symbol = float(six_j(twice_J, twice_F, twice_I, twice_F_other, twice_J_other, 2))
+    return (twice_F + 1) * (twice_F_other + 1) * symbol**2
 
 
 def as_wavelengths(wavelength_nm: ArrayLike) -> Array:
-    """Check vacuum wavelengths in nm and return them as shape (n,)."""
+    """Check vacuum wavelengths in nm and return them as shape (n,); infinity stands for a static field."""
     wavelengths = np.atleast_1d(np.asarray(wavelength_nm, dtype=np.float64))
-    if not np.all((wavelengths >= 50) & (wavelengths <= 1e6)):
-        raise OutsideValidity("wavelength", float(wavelengths[0]), "a vacuum wavelength from 50 nm to 1000000 nm")
+    fine = (wavelengths >= SHORTEST_NM) & (wavelengths <= LONGEST_NM) | np.isposinf(wavelengths)
+    if not np.all(fine):
+        worst = float(wavelengths[np.argmin(fine)])
+        raise OutsideValidity("wavelength", worst, f"a vacuum wavelength from {SHORTEST_NM:g} to {LONGEST_NM:g} nm")
     return wavelengths
 
 
-def share_of(level: Level, line: Line, light_mhz: Array, below_mhz: float = 0.0) -> Array:
-    """Compute what one line adds at n light frequencies, shape (3, n), in a0^3.
-
-    `below_mhz` is by how much the state in question lies above its level's centroid (a ground hyperfine shift): the
-    line's frequency is shorter by that.
-    """
-    other = line.upper if line.lower.name == level.name else line.lower
-    omega_k = (signed_frequency_mhz(level, line) - below_mhz) / HARTREE_MHZ
-    omega = light_mhz / HARTREE_MHZ
-    dipole = line.reduced_dipole.value if line.reduced_dipole is not None else 0.0
-    with np.errstate(divide="ignore"):
-        near, far = 1 / (omega_k - omega), 1 / (omega_k + omega)
-    if not np.all(np.isfinite(near) & np.isfinite(far)):
-        raise OutsideValidity("wavelength", MHZ_NM / abs(omega_k * HARTREE_MHZ), "off resonance with every line")
-    # E/h over the Hartree energy is omega in atomic units.
-    weights = rank_weights(level.twice_J, other.twice_J)
-    return dipole**2 * np.stack([w * (near + (-1) ** K * far) for K, w in zip(RANKS, weights, strict=True)])
+def hyperfine_levels(level: Level) -> dict[int, float]:
+    """List the zero-field energy in MHz of each F (doubled) of a level; zero where A is not published."""
+    A, B, C = (0.0 if part is None else part.value for part in (level.A, level.B, level.C))
+    J, I = level.twice_J, level.twice_I
+    return {F: hyperfine_shift(J, I, F, A, B, C) for F in range(abs(J - I), J + I + 1, 2)}
 
 
-def polarisability(
-    level: Level,
-    lines: Iterable[Line],
-    wavelength_nm: ArrayLike,
-    core: Quantity | None = None,
-    tail: Quantity | None = None,
-    below_mhz: float = 0.0,
-) -> Polarisability:
-    """Sum the polarisability of a level over its lines at n vacuum wavelengths (nm); see `Polarisability`."""
+def clearance_mhz(line: Line) -> float:
+    """Return how far from a component of a line light must be for the formula to hold."""
+    width = line.upper.width
+    return max(NEAREST_MHZ, 0.0 if width is None else NEAREST_WIDTHS * width.value)
+
+
+@dataclass(frozen=True, slots=True)
+class _Pole:
+    """One component F' of a line: signed frequency, weights by rank times |d|^2, clearance around it."""
+
+    frequency_mhz: float
+    weights: tuple[float, float, float]
+    clearance_mhz: float
+
+
+def _poles(level: Level, line: Line, twice_F: int | None) -> list[_Pole]:
+    other, centre, square = other_end(level, line), signed_frequency_mhz(level, line), dipole_of(line) ** 2
+    if twice_F is None:
+        spans = [max(shifts) - min(shifts) for end in (level, other) if (shifts := hyperfine_levels(end).values())]
+        weights = [square * weight for weight in rank_weights(level.twice_J, other.twice_J)]
+        return [_Pole(centre, (weights[0], weights[1], weights[2]), clearance_mhz(line) + sum(spans))]
+    below = hyperfine_levels(level)[twice_F]
+    poles = []
+    for F, above in hyperfine_levels(other).items():
+        if abs(F - twice_F) <= 2 <= F + twice_F:
+            share = square * hyperfine_share(level.twice_J, other.twice_J, level.twice_I, twice_F, F)
+            one, two, three = (share * weight for weight in rank_weights(twice_F, F))
+            poles.append(_Pole(centre + above - below, (one, two, three), clearance_mhz(line)))
+    return poles
+
+
+def _share(poles: list[_Pole], light_mhz: Array) -> tuple[Array, NDArray[np.bool_]]:
+    """Add the components of one line: (3, n) in a0^3, and where light is too close to one of them."""
+    total, close = np.zeros((3, light_mhz.size)), np.zeros(light_mhz.size, dtype=np.bool_)
+    for pole in poles:
+        near, far = pole.frequency_mhz - light_mhz, pole.frequency_mhz + light_mhz
+        close |= np.minimum(np.abs(near), np.abs(far)) < pole.clearance_mhz
+        with np.errstate(divide="ignore", invalid="ignore"):
+            near, far = HARTREE_MHZ / near, HARTREE_MHZ / far
+            total[0] += pole.weights[0] * (near + far)
+            total[1] += pole.weights[1] * (near - far)
+            total[2] += pole.weights[2] * (near + far)
+    return total, close
+
+
+def polarisability(partners: Partners, wavelength_nm: ArrayLike, twice_F: int | None = None) -> Polarisability:
+    """Sum the polarisability of a level, or of its hyperfine level F, at n vacuum wavelengths (nm)."""
+    level = partners.level
+    if twice_F is not None and twice_F not in hyperfine_levels(level):
+        allowed = ", ".join(map(format_half, hyperfine_levels(level)))
+        raise UnknownName("hyperfine level", f"F = {format_half(twice_F)}", hint=f"F of {level.name} is {allowed}")
     wavelengths = as_wavelengths(wavelength_nm)
     light = MHZ_NM / wavelengths
-    good, left_out = usable(level, lines)
-    shares = []
-    for line in good:
-        numbers = share_of(level, line, light, below_mhz)
-        dipole = line.reduced_dipole
-        relative = None if dipole is None or dipole.uncertainty is None else 2 * dipole.uncertainty / dipole.value
-        other = line.upper if line.lower.name == level.name else line.lower
-        shares.append(Share(line, other.name, numbers, None if relative is None else np.abs(numbers) * relative))
-    total = np.sum([share.numbers for share in shares], axis=0) if shares else np.zeros((3, wavelengths.size))
-    variance = sum((share.uncertainty**2 for share in shares if share.uncertainty is not None), np.zeros_like(total))
-    unstated = [f"strength of {share.line.name}" for share in shares if share.uncertainty is None]
-    for name, constant in (("core", core), ("tail", tail)):
-        if constant is not None:
-            total[0] += constant.value
-            if constant.uncertainty is None:
-                unstated.append(name)
-            else:
-                variance[0] += constant.uncertainty**2
-    uncertainty: Array = np.sqrt(variance)
-    return Polarisability(level, wavelengths, total, uncertainty, tuple(shares), core, tail, tuple(unstated), left_out)
+    shares, close = np.zeros((len(partners.lines), 3, light.size)), np.zeros(light.size, dtype=np.bool_)
+    for row, line in enumerate(partners.lines):
+        shares[row], near = _share(_poles(level, line, twice_F), light)
+        close |= near
+    numbers = shares.sum(axis=0)
+    numbers[0] += partners.remainder.value
+    doubts = [_doubt(partners, np.where(close, 0.0, shares[:, K]), light, K) for K in RANKS]
+    numbers[:, close], shares[:, :, close] = np.nan, np.nan
+    return Polarisability(partners, twice_F, wavelengths, numbers, shares, (doubts[0], doubts[1], doubts[2]), close)
+
+
+def _doubt(partners: Partners, shares: Array, light: Array, K: int) -> Doubt:
+    by_line = {line.name: shares[row] for row, line in enumerate(partners.lines)}
+    turned, tilted = vector_and_tensor_bounds(partners.level.twice_J)
+    weighing = (SCALAR, Weighing(0.0, turned=turned), Weighing(0.0, tilted=tilted))[K]
+    terms = strength_terms(partners, by_line, anchor=1.0 if K == 0 else 0.0)
+    return doubt_of(terms | remainder_terms(partners, light, weighing), light.size)
+
+
+@lru_cache(maxsize=256)
+def vector_and_tensor_bounds(twice_J: int) -> tuple[float, float]:
+    """Compute how large the vector (times omega_k/omega) and tensor part of one line can be beside its scalar part."""
+    others = [J for J in (twice_J - 2, twice_J, twice_J + 2) if J >= 0 and (J or twice_J)]
+    weights = [rank_weights(twice_J, J) for J in others]
+    return max(abs(w[1] / w[0]) for w in weights), max(abs(w[2] / w[0]) for w in weights)
