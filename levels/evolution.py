@@ -101,3 +101,21 @@ def _by_eigenvectors(matrix: Array, start: Array, times: Array) -> Array | None:
     factors = np.exp(np.minimum(values.real, 0.0)[None, :] * times[:, None] + 1j * values.imag * times[:, None])
     states: Array = (factors * shares @ vectors.T).real
     return states
+
+
+def slowest_us(matrix: Array, start: Array, observed: NDArray[np.int64]) -> float | None:
+    """Return the longest time constant with which the observed unknowns approach the steady state from the start.
+
+    Modes that hold less than a thousandth of the observed change are passed over. None where nothing changes.
+    """
+    values, vectors = np.linalg.eig(matrix)
+    try:
+        shares = np.linalg.solve(vectors, start.astype(np.complex128))
+    except np.linalg.LinAlgError:
+        return None
+    weight = np.abs(shares) * np.abs(vectors[observed]).max(axis=0)
+    moving = values.real < -1e-12 * np.abs(values).max()
+    if not moving.any():
+        return None
+    notable = moving & (weight > 1e-3 * weight[moving].max())
+    return float(-1.0 / values.real[notable].max())
