@@ -8,7 +8,7 @@ import numpy as np
 from levels.catalogue import Catalogue
 from levels.components import Components, components
 from levels.records import Line
-from tests.published.checks.table import FOUND, MEMORY, Check, in_magnetons
+from tests.published.checks.table import FOUND, MEMORY, PRACTICE, Check, in_magnetons
 
 CASES = "Sargsyan et al., Opt. Lett. 39, 2270 (2014), arXiv:1309.5775"
 CASES_D2 = "Sargsyan et al., arXiv:1405.7655 (2014)"
@@ -40,6 +40,16 @@ def intense_pi(atom: str, line: str) -> Callable[[Catalogue], float]:
         strength = found.strength[0, (found.lower_twice_F == lowest) & (found.upper_twice_F == lowest + 4)]
         assert strength.size == lowest + 1
         return float(np.count_nonzero(strength >= 0.1 * strength.max()))
+
+    return computed
+
+
+def leaving(line: str, label: tuple[int, int]) -> Callable[[Catalogue], float]:
+    """How many sigma+ components leave one lower sublevel."""
+
+    def computed(book: Catalogue) -> float:
+        found = components(book.find_line("87Rb", line), 1.0, q=1)
+        return float(np.count_nonzero((found.lower_twice_F == label[0]) & (found.lower_twice_m == label[1])))
 
     return computed
 
@@ -119,6 +129,10 @@ CHECKS = (
     lorentz("d2-sigma-inner", "D2", 1, 1, 1.0, "strong sigma+ components move by 1"),
     Check("na23-d2-sigma-strengths", "23Na D2: the inner sigma components are 3 times as strong as the outer", NOTES,
           FOUND, 3.0, 0.02, "1", "what hyperfine coupling is left at 10 T", strength_ratio),
+    Check("rb87-d1-dark", "87Rb |2,2> has no sigma+ component on D1", "NeuroImage 199, 598 (2019), PMC6988110", FOUND,
+          0, 0, "1", "a count", leaving("795", (4, 4))),
+    Check("rb87-d2-bright", "and exactly one on D2, the cycling line", "standard", PRACTICE, 1, 0, "1", "a count",
+          leaving("780", (4, 4))),
     dipole("sigma-2,2-3,3", (4, 4), (6, 6), 1 / 2),
     dipole("pi-2,0-3,0", (4, 0), (6, 0), 3 / 10),
     dipole("pi-2,1-3,1", (4, 2), (6, 2), 4 / 15),
