@@ -14,7 +14,7 @@ FICTIONAL = Path(__file__).parent / "data"
 
 settings.register_profile(
     "steady",
-    max_examples=60,
+    max_examples=40,
     deadline=None,
     derandomize=True,
     database=None,

@@ -213,7 +213,7 @@ def test_multipole_elements_carry_the_signs_of_the_second_implementation(
         assert element == pytest.approx((-1) ** ((J_up - m_up) // 2) * np.sqrt(J_up + 1) * symbol, abs=ROUNDING)
 
 
-@given(st.integers(0, 8), st.integers(0, 8), st.data())
+@given(st.integers(0, 5), st.integers(0, 6), st.data())
 def test_lande_shares_are_projections_of_the_vectors(L: int, S: int, data: st.DataObject) -> None:
     """g_L and g_S weigh in as <L_z> and <S_z> per M in the numerically coupled state of the largest M."""
     twice_L = 2 * L

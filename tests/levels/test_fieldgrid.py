@@ -105,6 +105,8 @@ LEVELS = {
     "128 sublevels": (LARGE, 3000.0),
     # INVENTED: B far larger than A brings crossings 0.3 kHz wide between 5 and 9 G.
     "narrow": (level(8, 5, -3.0, 900.0, None, 1.2, -0.0004), 40.0),
+    # 7Li 2p 2P3/2 in round numbers: the fine-structure neighbour 10 GHz below bends the sublevels strongly.
+    "mixed": (level(3, 3, -3.055, -0.221, None, 1.335, -0.00118, term="2P", neighbours=((1, -10053.2),)), 1000.0),
     "I = 0": (level(4, 0, g_J=1.5), 1e5),
 }
 
