@@ -7,7 +7,6 @@ A rule is a small named function in a table below. A finding can be answered in 
 import argparse
 import re
 import sys
-from collections import Counter
 from collections.abc import Callable, Iterable, Mapping, Sequence
 from dataclasses import dataclass
 from pathlib import Path
@@ -20,10 +19,10 @@ from levels import audit_structure as structure
 from levels.audit_labels import label_gaps
 from levels.audit_structure import Broken, Species
 from levels.audit_trends import smooth_trends
-from levels.audit_values import alternatives_of, values_of
 from levels.catalogue import DATA, Catalogue, load
 from levels.errors import DataError
 from levels.schema import DataFile, RuleException
+from levels.tally import format_tally, tally
 
 
 @dataclass(frozen=True, slots=True, order=True)
@@ -118,56 +117,6 @@ def _answers(pair: tuple[str, RuleException], finding: Finding) -> bool:
     return exception.rule == finding.rule and re.fullmatch(pattern, finding.where) is not None
 
 
-@dataclass(frozen=True, slots=True)
-class Tally:
-    """How much of a species is in the catalogue and how far it was compared."""
-
-    species: str
-    isotopes: int
-    levels: int
-    lines: int
-    values: int
-    checked: int
-    recalled: int
-    computed: int
-    alternatives: int
-    exceptions: int
-
-
-def tally(catalogue: Catalogue) -> list[Tally]:
-    """One row per species: recommended values by evidence, and the alternatives kept beside them."""
-    return [_tally(name, data) for name, data in sorted(catalogue.elements.items())]
-
-
-def _tally(name: str, data: DataFile) -> Tally:
-    values = [value for _, value in values_of(data)]
-    evidence = Counter(value.evidence for value in values)
-    return Tally(
-        species=name,
-        isotopes=len(data.isotopes),
-        levels=len(data.levels),
-        lines=len(data.lines),
-        values=len(values),
-        checked=evidence["checked"],
-        recalled=evidence["recalled"],
-        computed=evidence["computed"],
-        alternatives=sum(len(list(alternatives_of(value))) for value in values),
-        exceptions=len(data.exceptions),
-    )
-
-
-_COLUMNS = ("isotopes", "levels", "lines", "values", "checked", "recalled", "computed", "alternatives", "exceptions")
-
-
-def format_tally(rows: Sequence[Tally]) -> str:
-    """The tally as a table, with a line of sums."""
-    table = [["species", *_COLUMNS]]
-    table += [[row.species, *(str(getattr(row, column)) for column in _COLUMNS)] for row in rows]
-    table.append(["all", *(str(sum(getattr(row, column) for row in rows)) for column in _COLUMNS)])
-    widths = [max(len(line[place]) for line in table) for place in range(len(table[0]))]
-    return "\n".join("  ".join(cell.rjust(width) for cell, width in zip(line, widths, strict=True)) for line in table)
-
-
 def audit_overlay(directory: Path) -> tuple[Catalogue, list[Finding]]:
     """The packaged data with an overlay on it, and the findings that the overlay adds."""
     catalogue = load(overlay=directory)
@@ -189,7 +138,7 @@ def main(arguments: Sequence[str] | None = None) -> int:
     for finding in findings:
         print(finding)
     if options.tally:
-        print(format_tally(tally(catalogue)))
+        print(format_tally(tally(catalogue.elements)))
     print(f"{len(findings)} findings in {len(catalogue.elements)} species, {len(RULES)} rules", file=sys.stderr)
     return 1 if findings else 0
 

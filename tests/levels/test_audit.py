@@ -6,12 +6,13 @@ from pathlib import Path
 
 import pytest
 
-from levels.audit import RULES, audit, audit_overlay, format_tally, main, tally
+from levels.audit import RULES, audit, audit_overlay, main
 from levels.audit_structure import Species
 from levels.audit_trends import TRENDS, smooth_trends
 from levels.audit_values import values_of
 from levels.catalogue import Catalogue, load
 from levels.schema import validate
+from levels.tally import format_tally, tally
 from tests.conftest import FICTIONAL
 from tests.levels.test_schema import document
 
@@ -203,12 +204,12 @@ def test_an_exception_answers_its_finding_and_is_counted(tmp_path: Path) -> None
     (copy / "Zz.toml").write_text(text + answer)
     catalogue = load([copy])
     assert "A ratio" not in {finding.rule for finding in audit(catalogue)}
-    assert tally(catalogue)[0].exceptions == 1
+    assert tally(catalogue.elements)[0].exceptions == 1
 
 
 def test_the_tally_counts_every_value_once(fictional: Catalogue) -> None:
     """Values fall into checked, recalled and computed; alternatives are counted beside them."""
-    row = tally(fictional)[0]
+    row = tally(fictional.elements)[0]
     assert row.values == row.checked + row.recalled + row.computed == len(list(values_of(fictional.elements["Zz"])))
     assert (row.isotopes, row.levels, row.lines, row.alternatives) == (4, 11, 8, 1)
     assert format_tally([row, row]).splitlines()[-1].split()[:2] == ["all", "8"]
