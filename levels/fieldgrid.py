@@ -22,7 +22,7 @@ WORTH_IT = 3 * POINTS  # grid points in an interval below which the direct way i
 
 
 @lru_cache(maxsize=1)
-def _chebyshev() -> tuple[Array, Array]:
+def chebyshev() -> tuple[Array, Array]:
     """Return the Chebyshev points with both ends and the matrix from values there to coefficients.
 
     With both ends among the points no avoided crossing, however narrow, hides between the last point and the end.
@@ -64,7 +64,7 @@ def _round(
         values[rows] = columns(fields[rows])
     if not fitted:
         return []
-    points, to_coefficients = _chebyshev()
+    points, to_coefficients = chebyshev()
     nodes = np.concatenate([(low + high) / 2 + (high - low) / 2 * points for _, _, low, high in fitted])
     at_nodes = columns(nodes).reshape(len(fitted), POINTS, -1)
     halves = []

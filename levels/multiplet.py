@@ -72,6 +72,12 @@ def mixing(level: Level, field_gauss: ArrayLike) -> Mixing | None:
     return Mixing(float(np.sqrt(shift / nearest)), shift, names)
 
 
+def quiet_field_gauss(level: Level) -> float:
+    """Return the field up to which `caution` has nothing to say: the amplitude grows with the field."""
+    found = mixing(level, 1.0)
+    return NOTABLE_MIXING / found.amplitude if found is not None and found.amplitude > 0 else float("inf")
+
+
 def caution(level: Level, field_gauss: ArrayLike) -> tuple[str, ...]:
     """Warn where the mixing is more than second order can carry."""
     found = mixing(level, field_gauss)

@@ -177,22 +177,50 @@ class Spread:
     excludes: tuple[str, ...]
 
 
-def spread(terms: Terms) -> Spread:
+@dataclass(frozen=True, slots=True, eq=False)
+class Weights:
+    """How open each constant of some terms is: squares of stated uncertainties (t,), and the rest to be allowed for.
+
+    `unstated` has the rows without a stated uncertainty, `shares` the change to allow for in each, `mixing` whether
+    it is the second-order mixing.
+    """
+
+    variances: Array
+    unstated: NDArray[np.int64]
+    shares: Array
+    mixing: Sequence[bool]
+
+
+def weights_of(terms: Terms) -> Weights:
+    """Read the stated uncertainties of some terms' constants, and the changes to allow for in the others."""
+    sigmas = np.array([0.0 if constant is None else constant.uncertainty or 0.0 for constant in terms.constants])
+    shares = np.array([_share(constant, key) for constant, key in zip(terms.constants, terms.keys, strict=True)])
+    unstated = shares.nonzero()[0]
+    return Weights(sigmas**2, unstated, shares[unstated, None], [terms.constants[row] is None for row in unstated])
+
+
+def spread(terms: Terms, weights: Weights | None = None) -> Spread:
     """Combine stated contributions in quadrature; name the rest, and say where it could outweigh them.
 
-    A constant that a level does not have moves nothing here: `sublevels.cautions` speaks of it.
+    A constant that a level does not have moves nothing here: `sublevels.cautions` speaks of it. `weights` are those of
+    the terms, for a caller that has them already.
     """
-    sigmas = [0.0 if constant is None else constant.uncertainty or 0.0 for constant in terms.constants]
-    shares = [_share(constant, key) for constant, key in zip(terms.constants, terms.keys, strict=True)]
-    stated = np.sqrt(((terms.numbers.T * sigmas) ** 2).sum(axis=-1)).T
-    doubts = np.abs(terms.numbers.T * shares).T
-    uncertainty = np.where(doubts.max(axis=0) > stated, np.nan, stated)
+    weights = weights or weights_of(terms)
+    shape = terms.numbers.shape[1:]
+    rows = terms.numbers.reshape(weights.variances.size, -1)
+    stated = np.sqrt(weights.variances @ (rows * rows))
+    if not weights.unstated.size:
+        return Spread(stated.reshape(shape), stated.reshape(shape), ())
+    doubts = np.abs(rows[weights.unstated]) * weights.shares
+    beyond = doubts > stated
+    uncertainty = np.where(np.logical_or.reduce(beyond), np.nan, stated)
+    outweighs, moves = (np.logical_or.reduce(of, axis=1).tolist() for of in (beyond, doubts > 0))
     excludes = tuple(
-        name
-        for constant, name, doubt, share in zip(terms.constants, terms.names, doubts, shares, strict=True)
-        if share and (doubt > stated if constant is None else doubt).any()
+        terms.names[row]
+        for row, mixing, one, other in zip(weights.unstated, weights.mixing, outweighs, moves, strict=True)
+        if (one if mixing else other)
     )
-    return Spread(uncertainty, stated, excludes)
+    return Spread(uncertainty.reshape(shape), stated.reshape(shape), excludes)
 
 
 def _share(constant: Quantity | None, key: Hashable) -> float:

@@ -3,13 +3,15 @@
 Every record of a kind has the same keys in the same order; a missing value is null with a reason beside it.
 """
 
-import math
 import re
 from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import dataclass
+from functools import cached_property
+from math import isfinite, isnan
 from typing import Any
 
 import numpy as np
+import orjson
 from numpy.typing import NDArray
 
 from levels.quantity import Quantity
@@ -21,41 +23,70 @@ UNSOURCED = "computed"
 DOUBTED = "inputs without a stated uncertainty (uncertainty_excludes) could outweigh those with one"
 
 
+Used = Sequence[tuple[str, Quantity]]  # curated inputs, each with what it was used for
+
+
+@dataclass(frozen=True)
+class Basis(Sequence[tuple[str, Quantity]]):
+    """The curated inputs of answers about one thing, with the sources that makes worked out once."""
+
+    used: tuple[tuple[str, Quantity], ...]
+    publications: Mapping[str, Publication]
+
+    def __len__(self) -> int:
+        return len(self.used)
+
+    def __getitem__(self, at: Any) -> Any:
+        return self.used[at]
+
+    @cached_property
+    def sources(self) -> list[dict[str, Any]]:
+        """One record for each publication and evidence among the inputs."""
+        return sources_of(self.used, self.publications)
+
+    @cached_property
+    def encoded(self) -> orjson.Fragment:
+        """The sources as JSON."""
+        return orjson.Fragment(orjson.dumps(self.sources))
+
+
+def basis_of(used: Used, publications: Mapping[str, Publication]) -> Basis:
+    """The inputs with their sources, as they are or made now."""
+    return used if isinstance(used, Basis) else Basis(tuple(used), publications)
+
+
 @dataclass(frozen=True, slots=True)
 class Answer:
     """What a question is answered with: its own members, perhaps a table, and what the numbers rest on.
 
-    `used` pairs each curated input with what it was used for; sources and the refusal of recalled inputs come from it.
+    `used` has the curated inputs: sources and the refusal of recalled inputs come from it.
     """
 
     content: Mapping[str, Any]
     table: Table | None = None
     columnar: bool = True  # the table is part of the JSON; records are listed there instead
-    used: Sequence[tuple[str, Quantity]] = ()
+    used: Used = ()
     warnings: Sequence[str] = ()
     uncertainty_excludes: Sequence[str] = ()
 
 
 def finite(value: float) -> float:
     """The value, or NotFinite: NaN and infinity never leave."""
-    if not math.isfinite(value):
+    if not isfinite(value):
         raise NotFinite("a computed number is not finite")
     return value
 
 
 def scalar(value: float | None, uncertainty: float | None, unit: str, reason: str = "") -> dict[str, Any]:
     """A computed number. `reason` says why the value, or failing that its uncertainty, is null."""
-    return {
-        "value": None if value is None else finite(value),
-        "uncertainty": None if uncertainty is None else finite(uncertainty),
-        "unit": unit,
-        "reason": reason,
-    }
+    if not ((value is None or isfinite(value)) and (uncertainty is None or isfinite(uncertainty))):
+        raise NotFinite("a computed number is not finite")
+    return {"value": value, "uncertainty": uncertainty, "unit": unit, "reason": reason}
 
 
 def uncertain(value: float, uncertainty: float, stated: float, unit: str) -> dict[str, Any]:
     """A computed number whose uncertainty is NaN where an input without a stated one could outweigh the rest."""
-    if math.isnan(uncertainty):
+    if isnan(uncertainty):
         return scalar(value, None, unit, f"{DOUBTED}; the others make {stated:.2g} {unit}")
     return scalar(value, uncertainty, unit)
 
@@ -67,7 +98,7 @@ def uncertainty_columns(
     arrays = {name: np.asarray(column, dtype=np.float64) for name, column in columns.items()}
     doubted = {name: DOUBTED for name, array in arrays.items() if np.isnan(array).any()}
     written: dict[str, Column] = {
-        name: [None if math.isnan(item) else item for item in array.tolist()] if name in doubted else array
+        name: [None if isnan(item) else item for item in array.tolist()] if name in doubted else array
         for name, array in arrays.items()
     }
     return written, doubted

@@ -1,5 +1,6 @@
 """Builds the application: settings, catalogue, routes, errors and the layers around them."""
 
+import gc
 import logging
 from collections.abc import AsyncIterator
 from contextlib import asynccontextmanager
@@ -17,6 +18,7 @@ from service.asking import QuestionRoute
 from service.bench import bench_routes
 from service.cache import AnswerCache
 from service.context import build_context
+from service.dispatch import Questions
 from service.docs import docs_routes
 from service.metrics import Metrics
 from service.middleware import Front
@@ -37,7 +39,7 @@ vacuum. Errors are problems (RFC 9457) that say what would do.
 
 
 class Application:
-    """The service as one ASGI application: CORS around the front layer around FastAPI."""
+    """The service as one ASGI application: CORS around the front layer around the questions and FastAPI."""
 
     def __init__(self, api: FastAPI, layers: ASGIApp) -> None:
         self.api, self._layers = api, layers
@@ -56,6 +58,8 @@ def build_app(settings: Settings | None = None) -> Application:
         heavy = HeavyWork(settings)
         app.state.cache, app.state.heavy = AnswerCache(settings.cache_bytes), heavy
         app.state.context = build_context(settings)
+        gc.collect()
+        gc.freeze()  # the catalogue stays: a collection need not walk through it again and again
         yield
         app.state.context = None
         heavy.close()
@@ -74,13 +78,14 @@ def build_app(settings: Settings | None = None) -> Application:
         exception_handlers={HTTPException: answer_http_error, Problem: answer_problem, Exception: answer_error},
     )
     api.state.metrics, api.state.context = metrics, None
-    api.router.routes.extend(QuestionRoute(question) for question in QUESTIONS)
+    questions = [QuestionRoute(question) for question in QUESTIONS]
+    api.router.routes.extend(questions)
     api.router.routes.extend(ROUTES)
     document: dict[str, Any] = build_openapi(api, QUESTIONS)
     api.router.routes.extend(docs_routes(document, QUESTIONS))
     api.router.routes.extend(bench_routes())
     api.openapi = lambda: document  # type: ignore[method-assign]
-    front = Front(api, settings, metrics)
+    front = Front(Questions(api, api, questions), settings, metrics)
     layers = CORSMiddleware(
         front,
         allow_origins=settings.allow_origins,

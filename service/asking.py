@@ -6,18 +6,18 @@ the routes from their models; the requests take this way, which costs a third of
 
 import itertools
 import logging
+import time
 from collections.abc import Iterator, Mapping
 from dataclasses import dataclass
 from typing import Any
-from urllib.parse import parse_qsl
+from urllib.parse import unquote_plus
 
 import orjson
 from fastapi.routing import APIRoute
 from pydantic import ValidationError
 from starlette.types import Receive, Scope, Send
 
-from service import VERSION
-from service.answers import Answer, flat_row, sources_of
+from service.answers import Answer, basis_of, flat_row, sources_of
 from service.cache import AnswerCache, Headers, Reply
 from service.context import Context
 from service.formats import (
@@ -42,6 +42,7 @@ FRESH = b"public, max-age=60, stale-while-revalidate=300"
 MOST_PARAMETERS = 40
 STREAMED_NUMBERS = 100_000
 MOST_HEADER = 2000
+WORTH_KEEPING_SECONDS = 1e-4  # what is computed more quickly is not worth the memory of others
 CONTENT_HEADERS = (b"content-type", b"content-length")
 
 
@@ -53,12 +54,12 @@ class Work:
     context: Context
     path: Mapping[str, str]
     asked: Asked
-    echo: Mapping[str, Any]
+    echo: bytes
     row: Representation
 
     def tag(self, path: str) -> bytes:
         """The ETag: everything that decides the bytes of the answer."""
-        return etag(self.context.release, VERSION, path, orjson.dumps(self.echo).decode(), self.row.name)
+        return etag(self.context.stamp, path.encode(), self.echo, self.row.content_type)
 
     def answer(self) -> Answer:
         """Compute the answer; refuse recalled inputs where that was asked."""
@@ -73,13 +74,13 @@ class Work:
             table = answer.table or Table({name: [cell] for name, cell in flat_row(answer.content).items()})
             return csv_pieces(table) if self.row.name == "csv" else ndjson_pieces(table)
         after = {
-            "warnings": list(answer.warnings),
-            "uncertainty_excludes": list(answer.uncertainty_excludes),
-            "sources": sources_of(answer.used, self.context.publications),
+            "warnings": answer.warnings,
+            "uncertainty_excludes": answer.uncertainty_excludes,
+            "sources": basis_of(answer.used, self.context.publications).encoded,
             "release": self.context.release,
         }
         inline = answer.table if answer.columnar else None
-        return json_pieces({"query": self.echo, **answer.content}, inline, after)
+        return json_pieces({"query": orjson.Fragment(self.echo), **answer.content}, inline, after)
 
 
 class QuestionRoute(APIRoute):
@@ -131,8 +132,9 @@ class QuestionRoute(APIRoute):
             tag = work.tag(scope["path"])
             if if_none_match and if_none_match != b"*" and etag_matches(if_none_match, tag):
                 return Reply(304, _framing(tag, work.row))
+            started = time.perf_counter()
             reply = await self._computed(work, state.heavy, tag)
-            if isinstance(reply.body, bytes):
+            if isinstance(reply.body, bytes) and time.perf_counter() - started > WORTH_KEEPING_SECONDS:
                 cache.put(key, reply)
         if if_none_match and (if_none_match == b"*" or etag_matches(if_none_match, reply.tag)):
             return Reply(304, reply.headers, b"", reply.tag)
@@ -140,8 +142,7 @@ class QuestionRoute(APIRoute):
 
     def _work(self, context: Context, scope: Scope, asked: Asked, accept: bytes) -> Work:
         row = choose(asked.format, accept.decode("latin-1"))
-        echo = {**scope["path_params"], **asked.model_dump(exclude={"format"}, mode="json")}
-        return Work(self.question, context, scope["path_params"], asked, echo, row)
+        return Work(self.question, context, scope["path_params"], asked, echo_of(scope["path_params"], asked), row)
 
     async def _computed(self, work: Work, heavy: HeavyWork, tag: bytes = b"") -> Reply:
         answer = await heavy.run(work.answer) if self.question.heavy else work.answer()
@@ -154,21 +155,34 @@ class QuestionRoute(APIRoute):
         return Reply(200, (*headers, (b"content-length", str(len(body)).encode())), body, tag)
 
 
+def echo_of(path: Mapping[str, str], asked: Asked) -> bytes:
+    """The question with its defaults as JSON, in one spelling: the answer's echo, and what its ETag is made of."""
+    own = asked.__pydantic_serializer__.to_json(asked)
+    if not path:
+        return own
+    return orjson.dumps(path)[:-1] + (b"," if len(own) > 2 else b"") + own[1:]
+
+
 def read_query(question: Question, query_string: bytes) -> Asked:
     """The query string as the question's model; a key that is unknown or given twice is refused."""
-    try:
-        pairs = parse_qsl(query_string.decode("latin-1"), keep_blank_values=True, max_num_fields=MOST_PARAMETERS)
-    except ValueError:
+    text = query_string.decode("latin-1")
+    pairs = [part.partition("=") for part in text.split("&") if part]
+    if len(pairs) > MOST_PARAMETERS:
         bound = f"{MOST_PARAMETERS} parameters"
-        raise Problem(
-            "invalid-parameter", f"the query has more than {bound}", parameter="query", allowed=bound
-        ) from None
-    given = dict(pairs)
+        raise Problem("invalid-parameter", f"the query has more than {bound}", parameter="query", allowed=bound)
+    if "%" in text or "+" in text:
+        pairs = [(_decoded(name), "=", _decoded(value)) for name, _, value in pairs]
+    given = {name: value for name, _, value in pairs}
     if len(given) < len(pairs):
-        twice = next(name for at, (name, _) in enumerate(pairs) if name in dict(pairs[:at]))
+        names = [name for name, _, _ in pairs]
+        twice = next(name for name in names if names.count(name) > 1)
         detail = f"{twice} is given more than once"
         raise Problem("invalid-parameter", detail, parameter=twice, given=given[twice], allowed="one value")
     return validated(question, given)
+
+
+def _decoded(text: str) -> str:
+    return unquote_plus(text, errors="replace")
 
 
 def read_body(question: Question, body: bytes) -> Asked:
@@ -184,7 +198,7 @@ def read_body(question: Question, body: bytes) -> Asked:
 
 def validated(question: Question, given: dict[str, Any]) -> Asked:
     """What was given as the question's model, or a problem that says what would do."""
-    fields = question.asked.model_fields
+    fields = question.asked.__pydantic_fields__
     if not given.keys() <= fields.keys():
         unknown = next(name for name in given if name not in fields)
         near = nearest_names(unknown, fields)
@@ -195,7 +209,8 @@ def validated(question: Question, given: dict[str, Any]) -> Asked:
             "unknown-parameter", detail, parameter=unknown, given=value, allowed=", ".join(fields), nearest=near
         )
     try:
-        return question.asked.model_validate(given)
+        asked: Asked = question.asked.__pydantic_validator__.validate_python(given)
+        return asked
     except ValidationError as error:
         raise of_validation(error, lambda name: str(getattr(fields.get(name), "description", None) or "")) from None
 
@@ -209,7 +224,7 @@ def refuse_recalled(answer: Answer) -> None:
             allowed="evidence checked",
             detail=f"recalled from {quantity.source}",
         )
-        for purpose, quantity in dict(answer.used).items()
+        for purpose, quantity in answer.used
         if quantity.evidence == "recalled"
     ]
     if faults:
@@ -254,7 +269,7 @@ async def _body(receive: Receive, content_type: bytes, bound: int) -> bytes:
 
 
 def _framing(tag: bytes, row: Representation) -> Headers:
-    content_type = (b"content-type", row.content_type.encode())
+    content_type = (b"content-type", row.content_type)
     vary = (b"vary", b"accept")
     if not tag:
         return (content_type, vary, (b"cache-control", b"no-store"))

@@ -47,7 +47,8 @@ def docs_routes(document: Mapping[str, Any], questions: Iterable[Question]) -> l
 
 
 def ready(text: str, media_type: str) -> Callable[[Request], Awaitable[Response]]:
-    body, tag = text.encode(), etag(text).decode()
+    body = text.encode()
+    tag = etag(body).decode()
     headers = {**PAGE_HEADERS, "ETag": tag, "Content-Type": media_type}
 
     async def endpoint(request: Request) -> Response:
@@ -62,7 +63,7 @@ def _page(title: str, body: str) -> str:
     return (
         '<!doctype html>\n<html lang="en">\n<head>\n<meta charset="utf-8">\n'
         '<meta name="viewport" content="width=device-width, initial-scale=1">\n'
-        f'<title>{escape(title)}</title>\n'
+        f"<title>{escape(title)}</title>\n"
         '<link rel="icon" href="/page/mark.svg" type="image/svg+xml">\n'
         '<link rel="stylesheet" href="/docs/docs.css">\n'
         '<script type="module" src="/docs/docs.js"></script>\n</head>\n'

@@ -29,19 +29,19 @@ class Representation:
 
     name: str
     media_type: str
-    content_type: str
+    content_type: bytes
     accepted_as: tuple[str, ...]
 
 
 REPRESENTATIONS = {
     row.name: row
     for row in (
-        Representation("json", "application/json", "application/json", ("application/json", "text/json")),
-        Representation("csv", "text/csv", "text/csv; charset=utf-8; header=present", ("text/csv",)),
+        Representation("json", "application/json", b"application/json", ("application/json", "text/json")),
+        Representation("csv", "text/csv", b"text/csv; charset=utf-8; header=present", ("text/csv",)),
         Representation(
             "ndjson",
             "application/x-ndjson",
-            "application/x-ndjson",
+            b"application/x-ndjson",
             ("application/x-ndjson", "application/ndjson", "application/jsonl", "application/json-lines"),
         ),
     )
@@ -100,9 +100,9 @@ def _matches(media_type: str, row: Representation) -> bool:
     )
 
 
-def etag(*parts: str) -> bytes:
+def etag(*parts: bytes) -> bytes:
     """A strong ETag of everything that decides an answer's bytes: release, version, canonical query, representation."""
-    return b'"' + hashlib.blake2b("\0".join(parts).encode(), digest_size=12).hexdigest().encode() + b'"'
+    return b'"' + hashlib.blake2b(b"\0".join(parts), digest_size=12).hexdigest().encode() + b'"'
 
 
 def etag_matches(if_none_match: bytes, tag: bytes) -> bool:

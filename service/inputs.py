@@ -1,10 +1,14 @@
-"""What an answer rests on: the curated constants of levels and lines that a computation used, with their names."""
+"""What answers about a level or a line rest on: its curated constants, their sources, and the limits of the model."""
 
-from levels.multiplet import caution
-from levels.notation import format_half
+from collections.abc import Mapping
+from dataclasses import dataclass
+
+from levels.multiplet import caution, quiet_field_gauss
 from levels.quantity import Quantity
 from levels.records import Level, Line
 from levels.sublevels import cautions
+from service.answers import Basis
+from service.citations import Publication
 
 Used = list[tuple[str, Quantity]]
 
@@ -22,20 +26,50 @@ def level_inputs(level: Level) -> Used:
 
 
 def line_inputs(line: Line) -> Used:
-    """The constants of a line's two levels, the frequency of its centroid and of components measured themselves."""
+    """The constants of a line's two levels and the frequency of its centroid."""
     centroid: Used = [] if line.centroid is None else [(f"centroid of {line.name}", line.centroid)]
-    measured = [(f"{format_half(F)}-{format_half(F_up)} of {line.name}", known) for F, F_up, known in line.measured]
-    return [*level_inputs(line.lower), *level_inputs(line.upper), *centroid, *measured]
+    return [*level_inputs(line.lower), *level_inputs(line.upper), *centroid]
 
 
-def level_warnings(level: Level, largest_field_gauss: float) -> list[str]:
-    """Where the model of a level is stretched at fields up to the given one."""
-    return [*cautions(level), *caution(level, largest_field_gauss)]
+def line_cautions(line: Line) -> tuple[str, ...]:
+    """What a line leaves out at any field."""
+    natural = line.centroid is not None and line.centroid_isotope == "natural"
+    mixture = (f"the frequency of {line.name} is that of the natural mixture of isotopes",) if natural else ()
+    return (*cautions(line.lower), *cautions(line.upper), *mixture)
 
 
 def line_warnings(line: Line, largest_field_gauss: float) -> list[str]:
     """Where the model of a line is stretched at fields up to the given one."""
-    ends = [*level_warnings(line.lower, largest_field_gauss), *level_warnings(line.upper, largest_field_gauss)]
-    if line.centroid is not None and line.centroid_isotope == "natural":
-        ends.append(f"the frequency of {line.name} is that of the natural mixture of isotopes")
-    return list(dict.fromkeys(ends))
+    mixed = (*caution(line.lower, largest_field_gauss), *caution(line.upper, largest_field_gauss))
+    return list(dict.fromkeys((*line_cautions(line), *mixed)))
+
+
+@dataclass(frozen=True, slots=True)
+class Grounds:
+    """What answers about some levels, and perhaps the line between them, rest on."""
+
+    levels: tuple[Level, ...]
+    basis: Basis
+    always: tuple[str, ...]
+    quiet_field_gauss: float
+
+    def warnings(self, largest_field_gauss: float) -> list[str]:
+        """Where the model is stretched at fields up to the given one."""
+        if abs(largest_field_gauss) <= self.quiet_field_gauss:
+            return list(self.always)
+        mixed = [text for level in self.levels for text in caution(level, largest_field_gauss)]
+        return list(dict.fromkeys((*self.always, *mixed)))
+
+
+def level_grounds(*levels: Level, publications: Mapping[str, Publication]) -> Grounds:
+    """The grounds of answers about one level, or about two."""
+    used = dict(item for level in levels for item in level_inputs(level))
+    always = tuple(dict.fromkeys(text for level in levels for text in cautions(level)))
+    return Grounds(levels, Basis(tuple(used.items()), publications), always, min(map(quiet_field_gauss, levels)))
+
+
+def line_grounds(line: Line, publications: Mapping[str, Publication]) -> Grounds:
+    """The grounds of answers about a line."""
+    quiet = min(quiet_field_gauss(line.lower), quiet_field_gauss(line.upper))
+    basis = Basis(tuple(line_inputs(line)), publications)
+    return Grounds((line.lower, line.upper), basis, line_cautions(line), quiet)

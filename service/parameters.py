@@ -3,6 +3,7 @@
 Fields become gauss and frequencies MHz; angular momenta are doubled integers inside and decimals in the echo.
 """
 
+from functools import lru_cache
 from typing import Annotated, Any
 
 from pydantic import BeforeValidator, Field, PlainSerializer, WithJsonSchema
@@ -54,8 +55,12 @@ SplittingMhz = Annotated[float, _reader("frequency", "MHz", -1e9, 1e9), NUMBER_O
 SpreadMhz = Annotated[float, _reader("frequency", "MHz", 0.0, 1e9), NUMBER_OR_TEXT]
 
 
+_parse_sublevel = lru_cache(4096)(parse_sublevel)
+_format_sublevel = lru_cache(4096)(format_sublevel)
+
+
 def _sublevel(given: Any) -> tuple[int, int]:
-    return parse_sublevel(_text(given, "sublevel", "F,m such as 2,-1"))
+    return _parse_sublevel(_text(given, "sublevel", "F,m such as 2,-1"))
 
 
 def _half(given: Any) -> int:
@@ -69,7 +74,7 @@ def _polarisation(given: Any) -> int:
 Sublevel = Annotated[
     tuple[int, int],
     BeforeValidator(_sublevel),
-    PlainSerializer(lambda pair: format_sublevel(*pair), return_type=str),
+    PlainSerializer(lambda pair: _format_sublevel(*pair), return_type=str),
     WithJsonSchema({"type": "string", "description": "F,m at zero field, as `2,-1` or `3/2,1/2`; F is J for I = 0"}),
 ]
 Half = Annotated[

@@ -7,6 +7,7 @@ from service.routes import (
     components,
     features,
     field,
+    finding,
     insensitive,
     profile,
     shift,
@@ -16,8 +17,7 @@ from service.routes import (
 )
 
 QUESTIONS: tuple[Question, ...] = (
-    *catalogue.QUESTIONS,
-    shift.QUESTION,
+    shift.QUESTION,  # routes are tried in this order: what control software asks all day comes first
     sublevels.QUESTION,
     components.QUESTION,
     strengths.QUESTION,
@@ -27,4 +27,6 @@ QUESTIONS: tuple[Question, ...] = (
     features.QUESTION,
     profile.QUESTION,
     *angular.QUESTIONS,
+    *catalogue.QUESTIONS,
+    *finding.QUESTIONS,
 )

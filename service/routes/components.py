@@ -12,7 +12,6 @@ from levels.uncertainty import component_spread
 from service.answers import Answer, uncertainty_columns
 from service.context import Context
 from service.formats import Column, Table
-from service.inputs import line_inputs, line_warnings
 from service.parameters import FieldGauss, Name, PolarisationName
 from service.question import Computed, Question
 from service.routes.shift import NO_CENTROID, NO_STRENGTH, no_frequency_spread
@@ -97,7 +96,7 @@ def answer_components(context: Context, path: Mapping[str, str], asked: Componen
     Strengths are normalised so that all decays of one upper sublevel to the lower level sum to 1. Components that are
     closed at zero field and that the field opens are listed too.
     """
-    line = context.line(path["atom"], asked.line)
+    line, grounds = context.line(path["atom"], asked.line), context.line_grounds(path["atom"], asked.line)
     found = components(line, asked.field, asked.polarisation)
     spread = component_spread(line, asked.field, asked.polarisation)
     sigma, doubted = uncertainty_columns(dict(zip(UNCERTAINTIES, spread.uncertainty[ORDER, 0], strict=True)))
@@ -122,8 +121,8 @@ def answer_components(context: Context, path: Mapping[str, str], asked: Componen
     return Answer(
         {"atom": line.atom, "line": line.name, "lower_level": line.lower.name, "upper_level": line.upper.name},
         Table(columns, missing),
-        used=line_inputs(line),
-        warnings=line_warnings(line, asked.field),
+        used=grounds.basis,
+        warnings=grounds.warnings(asked.field),
         uncertainty_excludes=spread.excludes,
     )
 

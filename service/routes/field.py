@@ -9,7 +9,6 @@ from levels.records import Level
 from service.answers import DOUBTED, Answer
 from service.context import Context
 from service.formats import Column, Table
-from service.inputs import level_inputs, level_warnings
 from service.parameters import LargestField, Name, SplittingMhz, SpreadMhz, Sublevel
 from service.question import Computed, Question
 from service.schemas import MaybeNumbers, Numbers, Shape, Tabular
@@ -57,17 +56,20 @@ def field(context: Context, path: Mapping[str, str], asked: FieldAsked) -> Answe
     The uncertainty joins that of the measurement and that of the constants. Within one level the sign of the splitting
     does not matter.
     """
-    level = context.level(path["atom"], asked.level)
-    upper = level if asked.upper_level is None else context.level(path["atom"], asked.upper_level)
+    names = dict.fromkeys((asked.level, asked.upper_level or asked.level))
+    level, upper = (
+        context.level(path["atom"], asked.level),
+        context.level(path["atom"], asked.upper_level or asked.level),
+    )
+    grounds = context.level_grounds(path["atom"], *names)
     found = fields_from_splitting(
         level, asked.lower, upper, asked.upper, asked.splitting, asked.max_field, asked.uncertainty
     )
-    warnings = [*level_warnings(level, asked.max_field), *level_warnings(upper, asked.max_field)]
     return Answer(
         {"atom": level.atom, "level": level.name, "upper_level": upper.name},
         Table(_columns(found), {"field_uncertainty_G": NO_SPREAD} if _unknown(found) else {}),
-        used=list(dict([*level_inputs(level), *level_inputs(upper)]).items()),
-        warnings=[*dict.fromkeys(warnings), *([] if found else [_nothing(level, upper, asked)])],
+        used=grounds.basis,
+        warnings=[*grounds.warnings(asked.max_field), *([] if found else [_nothing(level, upper, asked)])],
         uncertainty_excludes=list(dict.fromkeys(name for one in found for name in one.excludes)),
     )
 

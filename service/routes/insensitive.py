@@ -9,7 +9,6 @@ from levels.sensitivity import ENERGY, QUADRATIC
 from service.answers import Answer, uncertainty_columns
 from service.context import Context
 from service.formats import Column, Table
-from service.inputs import level_inputs, level_warnings
 from service.parameters import LargestField, Name
 from service.question import Computed, Question
 from service.schemas import Labels, MaybeNumbers, Numbers, Shape, Tabular
@@ -54,16 +53,18 @@ def answer_insensitive(context: Context, path: Mapping[str, str], asked: Insensi
     Within one level the sublevel of lower energy is `lower`. Pairs of two m = 0 sublevels are stationary at zero field
     and are listed there.
     """
-    level = context.level(path["atom"], asked.level)
-    upper = level if asked.upper_level is None else context.level(path["atom"], asked.upper_level)
+    names = dict.fromkeys((asked.level, asked.upper_level or asked.level))
+    level, upper = (
+        context.level(path["atom"], asked.level),
+        context.level(path["atom"], asked.upper_level or asked.level),
+    )
+    grounds = context.level_grounds(path["atom"], *names)
     points = insensitive(level, upper, asked.max_field, 2 * asked.max_dm)
     return Answer(
         {"atom": level.atom, "level": level.name, "upper_level": upper.name},
         _table(points),
-        used=list(dict([*level_inputs(level), *level_inputs(upper)]).items()),
-        warnings=list(
-            dict.fromkeys((*level_warnings(level, asked.max_field), *level_warnings(upper, asked.max_field)))
-        ),
+        used=grounds.basis,
+        warnings=grounds.warnings(asked.max_field),
         uncertainty_excludes=list(dict.fromkeys(name for point in points for name in point.spread.excludes)),
     )
 

@@ -4,13 +4,12 @@ from collections.abc import Mapping
 
 from pydantic import Field
 
-from levels.components import Component, component
+from levels.components import Component
 from levels.notation import format_polarisation
 from levels.records import Line
 from levels.sensitivity import ENERGY, QUADRATIC, SHIFT, SLOPE
 from service.answers import DOUBTED, Answer, scalar, uncertain
 from service.context import Context
-from service.inputs import line_inputs, line_warnings
 from service.parameters import FieldGauss, Name, Sublevel
 from service.question import Computed, Question
 from service.schemas import Answered, Half, Scalar
@@ -57,12 +56,12 @@ def shift(context: Context, path: Mapping[str, str], asked: ShiftAsked) -> Answe
 
     Neglected: mixing of the fine-structure levels beyond second order, and the diamagnetic shift.
     """
-    line = context.line(path["atom"], asked.line)
-    found = component(line, asked.lower, asked.upper, asked.field)
+    grounds = context.line_grounds(path["atom"], asked.line)
+    found = context.component(path["atom"], asked.line, asked.lower, asked.upper).at(asked.field)
     return Answer(
-        {**labels(line, found), **numbers(line, found)},
-        used=line_inputs(line),
-        warnings=line_warnings(line, asked.field),
+        {**labels(found.line, found), **numbers(found)},
+        used=grounds.basis,
+        warnings=grounds.warnings(asked.field),
         uncertainty_excludes=found.spread.excludes,
     )
 
@@ -82,7 +81,7 @@ def labels(line: Line, found: Component) -> dict[str, str | float]:
     }
 
 
-def numbers(line: Line, found: Component) -> dict[str, object]:
+def numbers(found: Component) -> dict[str, object]:
     """What the component does."""
     spread, stated = (array[:, 0, 0].tolist() for array in (found.spread.uncertainty, found.spread.stated))
     known = found.strength_known

@@ -10,7 +10,6 @@ from levels.records import Line
 from service.answers import Answer
 from service.context import Context
 from service.formats import Column, Table
-from service.inputs import line_inputs, line_warnings
 from service.parameters import Name
 from service.question import Computed, Question
 from service.routes.shift import NO_STRENGTH
@@ -55,7 +54,7 @@ def strengths(context: Context, path: Mapping[str, str], asked: StrengthsAsked) 
 
     S is the share of F' in all the absorption from F: it sums to 1 over F' for each F.
     """
-    line = context.line(path["atom"], asked.line)
+    line, grounds = context.line(path["atom"], asked.line), context.line_grounds(path["atom"], asked.line)
     found = hyperfine_components(line)
     missing: dict[str, str] = {}
     columns: dict[str, Column] = {
@@ -69,7 +68,7 @@ def strengths(context: Context, path: Mapping[str, str], asked: StrengthsAsked) 
     }
     if any(part.strength is None for part in found):
         missing["strength"] = NO_STRENGTH
-    return Answer(_content(line), Table(columns, missing), used=line_inputs(line), warnings=line_warnings(line, 0.0))
+    return Answer(_content(line), Table(columns, missing), used=grounds.basis, warnings=grounds.warnings(0.0))
 
 
 def _content(line: Line) -> dict[str, str]:

@@ -11,7 +11,6 @@ from levels.uncertainty import sublevel_spread
 from service.answers import Answer, uncertainty_columns
 from service.context import Context
 from service.formats import Column, Table
-from service.inputs import level_inputs, level_warnings
 from service.parameters import FieldGauss, Name
 from service.question import Computed, Question
 from service.schemas import Labels, MaybeNumbers, Numbers, Shape, Tabular
@@ -70,7 +69,7 @@ def answer_sublevels(context: Context, path: Mapping[str, str], asked: Sublevels
     Energies count from the level's hyperfine centroid. Uncertainties come from those of A, B, C, g_J and g_I; inputs
     without one are listed in `uncertainty_excludes`.
     """
-    level = context.level(path["atom"], asked.level)
+    level, grounds = context.level(path["atom"], asked.level), context.level_grounds(path["atom"], asked.level)
     found, spread = sublevels(level, asked.field), sublevel_spread(level, asked.field)
     sigma, doubted = uncertainty_columns(dict(zip(UNCERTAINTIES, spread.uncertainty[ORDER, 0], strict=True)))
     columns: dict[str, Column] = {
@@ -88,8 +87,8 @@ def answer_sublevels(context: Context, path: Mapping[str, str], asked: Sublevels
     return Answer(
         {"atom": level.atom, "level": level.name},
         Table(columns, doubted),
-        used=level_inputs(level),
-        warnings=level_warnings(level, asked.field),
+        used=grounds.basis,
+        warnings=grounds.warnings(asked.field),
         uncertainty_excludes=spread.excludes,
     )
 

@@ -11,12 +11,11 @@ from pydantic import Field
 from levels.components import components, pairs_of, strength_model
 from levels.errors import OutsideValidity, UnknownName
 from levels.notation import format_polarisation, format_sublevel
-from levels.records import Level, Line
+from levels.records import Line
 from levels.sublevels import constants_of, labels_of, sublevels
 from service.answers import Answer
 from service.context import Context
 from service.formats import Column, Table
-from service.inputs import level_inputs, level_warnings, line_inputs, line_warnings
 from service.parameters import FieldGauss, Name, PolarisationName, Sublevel
 from service.problems import Problem
 from service.question import Computed, Question, Strict
@@ -113,11 +112,12 @@ def sweep(context: Context, path: Mapping[str, str], asked: SweepAsked) -> Answe
         raise OutsideValidity("level", asked.level or "", "either level or line, not both")
     fields = asked.fields.gauss()
     if asked.level is not None:
-        return _of_level(context, context.level(asked.atom, asked.level), asked, fields)
-    return _of_line(context, context.line(asked.atom, str(asked.line)), asked, fields)
+        return _of_level(context, asked, asked.level, fields)
+    return _of_line(context, asked, str(asked.line), fields)
 
 
-def _of_level(context: Context, level: Level, asked: SweepAsked, fields: Array) -> Answer:
+def _of_level(context: Context, asked: SweepAsked, name: str, fields: Array) -> Answer:
+    level, grounds = context.level(asked.atom, name), context.level_grounds(asked.atom, name)
     _refuse(asked, ("lower", "upper", "polarisation"), "of a line, not of a level")
     names = _names(asked, OF_LEVEL, ("energy_MHz", "slope_MHz_per_G"))
     labels = labels_of(constants_of(level))
@@ -139,12 +139,13 @@ def _of_level(context: Context, level: Level, asked: SweepAsked, fields: Array) 
     return Answer(
         {"atom": level.atom, "level": level.name, "line": ""},
         Table(columns),
-        used=level_inputs(level),
-        warnings=level_warnings(level, float(np.abs(fields).max())),
+        used=grounds.basis,
+        warnings=grounds.warnings(float(np.abs(fields).max())),
     )
 
 
-def _of_line(context: Context, line: Line, asked: SweepAsked, fields: Array) -> Answer:
+def _of_line(context: Context, asked: SweepAsked, name: str, fields: Array) -> Answer:
+    line, grounds = context.line(asked.atom, name), context.line_grounds(asked.atom, name)
     _refuse(asked, ("sublevels",), "of a level, not of a line")
     names = _names(asked, OF_LINE, ("offset_MHz", "slope_MHz_per_G", "strength"))
     pairs = pairs_of(line, asked.polarisation)
@@ -172,8 +173,8 @@ def _of_line(context: Context, line: Line, asked: SweepAsked, fields: Array) -> 
     return Answer(
         {"atom": line.atom, "level": line.upper.name, "line": line.name},
         Table(columns, missing),
-        used=line_inputs(line),
-        warnings=line_warnings(line, float(np.abs(fields).max())),
+        used=grounds.basis,
+        warnings=grounds.warnings(float(np.abs(fields).max())),
     )
 
 

@@ -192,7 +192,7 @@ def test_answers_may_be_kept_and_vary(client: TestClient) -> None:
 
 def test_etag_helpers() -> None:
     """Parts of an ETag do not run into each other, and a list of ETags is searched."""
-    assert etag("ab", "c") != etag("a", "bc")
+    assert etag(b"ab", b"c") != etag(b"a", b"bc")
     assert etag_matches(b'"x", W/"y"', b'"y"')
     assert not etag_matches(b'"x"', b'"y"')
 
