@@ -184,12 +184,12 @@ SCALAR = Weighing()
 def remainder_terms(partners: Partners, light_mhz: Array, weighing: Weighing = SCALAR) -> Terms:
     """Say how a polarisability at n light frequencies moves with the remainder and what bounds its dispersion."""
     rest, name = partners.remainder, partners.level.name
-    unknown = rest.uncertainty is None or rest.opens_mhz <= 0
-    ratio = np.where(light_mhz < rest.opens_mhz, light_mhz / max(rest.opens_mhz, 1e-300), np.nan)
-    square = ratio**2
-    growth = abs(weighing.scalar) * square + weighing.turned * ratio + weighing.tilted
-    growth = (growth + 2 * weighing.moved_mhz / max(rest.opens_mhz, 1e-300) / (1 - square)) / (1 - square)
-    bound = np.full_like(light_mhz, np.nan) if unknown else abs(rest.dispersing) * growth
+    bound = np.full_like(light_mhz, np.nan)
+    if rest.uncertainty is not None and rest.opens_mhz > 0:
+        ratio = np.where(light_mhz < rest.opens_mhz, light_mhz / rest.opens_mhz, np.nan)
+        growth = abs(weighing.scalar) * ratio**2 + weighing.turned * ratio + weighing.tilted
+        growth = growth + 2 * weighing.moved_mhz / rest.opens_mhz / (1 - ratio**2)
+        bound = abs(rest.dispersing) * growth / (1 - ratio**2)
     terms: Terms = {("dispersion", name): (bound, 1.0, f"what the sum of {name} leaves out")}
     if weighing.scalar:
         spread = np.nan if rest.uncertainty is None else rest.uncertainty

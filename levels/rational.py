@@ -2,20 +2,22 @@
 
 f(x) = constant + sum_i weight_i / (pole_i - x), weights of either sign. Roots are isolated by halving cells until a
 bound on the second derivative proves that a cell holds none, or that f is monotone in it. So none is missed, however
-close two of them lie, down to cells of `FINEST` (there a touching root is told by a value within rounding). Stretches
-within a clearance of a pole are left out of the range.
+close two of them lie, down to cells of `FINEST` (there a touching root is told by a value within rounding). Where the
+function cancels so well that this takes more than `MOST_CELLS`, only changes of sign between cells are found, and
+`Roots.proved` is False. Stretches within a clearance of a pole are left out of the range.
 """
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
-from scipy.optimize import brentq
 
 Array = NDArray[np.float64]
 FINEST = 1e-12  # of the largest abscissa
 ROUNDING = 64 * np.finfo(float).eps
 MOST_HALVINGS = 60
+MOST_CELLS = 200_000
+SAME_POLE = 1e-14  # relative: closer ones are one pole
 CANCELLED = 1e-13  # of the weights that met at one pole
 
 
@@ -47,6 +49,7 @@ class Roots:
 
     roots: tuple[float, ...]
     vanishes: bool = False
+    proved: bool = True
 
 
 def minus(first: Rational, second: Rational) -> Rational:
@@ -61,14 +64,16 @@ def minus(first: Rational, second: Rational) -> Rational:
 
 def merged(function: Rational) -> Rational:
     """Join equal poles; those whose weights cancel drop out."""
-    pole, inverse = np.unique(function.pole, return_inverse=True)
-    weight, size = np.zeros(pole.size), np.zeros(pole.size)
-    clearance = np.zeros(pole.size)
-    np.add.at(weight, inverse, function.weight)
-    np.add.at(size, inverse, np.abs(function.weight))
-    np.maximum.at(clearance, inverse, function.clearance)
+    order = np.argsort(function.pole)
+    rising = function.pole[order]
+    starts = np.diff(rising, prepend=-np.inf) > SAME_POLE * np.abs(rising)
+    group = np.cumsum(starts) - 1
+    weight, size, clearance = (np.zeros(int(starts.sum())) for _ in range(3))
+    np.add.at(weight, group, function.weight[order])
+    np.add.at(size, group, np.abs(function.weight[order]))
+    np.maximum.at(clearance, group, function.clearance[order])
     kept = np.abs(weight) > CANCELLED * size
-    return Rational(pole[kept], weight[kept], clearance[kept], function.constant)
+    return Rational(rising[starts][kept], weight[kept], clearance[kept], function.constant)
 
 
 def stretches(function: Rational, low: float, high: float) -> list[tuple[float, float]]:
@@ -90,31 +95,43 @@ def stretches(function: Rational, low: float, high: float) -> list[tuple[float, 
 
 def every_root(function: Rational, low: float, high: float) -> Roots:
     """Find every root from `low` to `high` outside the clearances."""
-    whole, function = function, merged(function)
+    finest = FINEST * max(abs(low), abs(high))
+    function = replace(function, clearance=np.maximum(function.clearance, finest))
+    cells = np.array(stretches(function, low, high)).reshape(-1, 2)
+    function = merged(function)
     if not function.pole.size and function.constant == 0.0:
         return Roots((), vanishes=True)
-    cells = np.array(stretches(whole, low, high)).reshape(-1, 2)
-    finest = FINEST * max(abs(low), abs(high))
     found: list[float] = []
     vanished = 0.0
     for _ in range(MOST_HALVINGS):
-        if not cells.size:
+        if not cells.size or len(cells) > MOST_CELLS:
             break
         middle, half = cells.mean(axis=1), (cells[:, 1] - cells[:, 0]) / 2
         value, slope, bend, noise = _about(function, cells, middle)
         reach = np.abs(slope) * half + bend * half**2 / 2
-        flat = (np.abs(value) + reach < noise) & (half > finest)
+        flat = np.abs(value) + reach < noise
         vanished += float(2 * half[flat].sum())
-        none = np.abs(value) > reach
+        none = flat | (np.abs(value) > reach)
         monotone = ~none & (np.abs(slope) > bend * half)
-        found += [root for cell in cells[monotone & ~flat] for root in _crossing(function, cell)]
-        open_ = ~none & ~monotone & ~flat
-        small = open_ & (half <= finest)
+        found += [root for cell in cells[monotone] for root in _crossing(function, cell)]
+        undecided = ~none & ~monotone
+        small = undecided & (half <= finest)
         found += [float(at) for at in middle[small & (np.abs(value) <= noise)]]
-        halved = cells[open_ & ~small]
+        halved = cells[undecided & ~small]
         centre = halved.mean(axis=1)
         cells = np.concatenate([np.stack([halved[:, 0], centre], 1), np.stack([centre, halved[:, 1]], 1)])
-    return Roots(tuple(_distinct(sorted(found), 4 * finest)), vanished > 0.5 * (high - low))
+    found += [root for cell in _changing(function, cells) for root in _crossing(function, cell)]
+    return Roots(tuple(_distinct(sorted(found), 4 * finest)), vanished > 0.5 * (high - low), not cells.size)
+
+
+def _changing(function: Rational, cells: Array) -> Array:
+    """Keep the cells at whose ends the function has different signs, beyond rounding."""
+    if not cells.size:
+        return cells
+    ends = np.stack([function.value(cells[:, 0]), function.value(cells[:, 1])], axis=1)
+    noise = _about(function, cells, cells.mean(axis=1))[3]
+    kept: Array = cells[(ends[:, 0] * ends[:, 1] < 0) & (np.abs(ends).max(axis=1) > noise)]
+    return kept
 
 
 def _about(function: Rational, cells: Array, middle: Array) -> tuple[Array, Array, Array, Array]:
@@ -137,7 +154,23 @@ def _crossing(function: Rational, cell: Array) -> list[float]:
         return [high]
     if (at_low < 0) == (at_high < 0):
         return []
-    return [float(brentq(lambda x: float(function.value(x)[0]), low, high, xtol=1e-9, rtol=1e-15))]
+    return [_polished(function, low, high, at_low < 0)]
+
+
+def _polished(function: Rational, low: float, high: float, rising: bool) -> float:
+    """Close in on the root of a monotone cell by Newton's method, by halving where that leaves the cell."""
+    x = (low + high) / 2
+    for _ in range(2 * MOST_HALVINGS):
+        value, slope = float(function.value(x)[0]), float(function.slope(x)[0])
+        if value == 0.0:
+            return x
+        low, high = (x, high) if (value < 0) == rising else (low, x)
+        step = x - value / slope if slope else x
+        following = step if low < step < high else (low + high) / 2
+        if abs(following - x) <= 2 * np.spacing(abs(x)) or following in (low, high):
+            return following
+        x = following
+    return x
 
 
 def _distinct(rising: list[float], apart: float) -> list[float]:
