@@ -22,11 +22,16 @@ from tests.bench.processes import cpu_seconds, free_port, get, server
 
 PAIRS, SECONDS, CONNECTIONS = 7, 2, 16
 LABELS = (("2,2", "3,3"), ("2,0", "3,1"), ("1,-1", "2,0"), ("1,0", "0,0"))
+TAIL = " HTTP/1.1\\r\\nHost: bench\\r\\n\\r\\n"
 SCRIPT = """\
-local paths, k = {%s}, 0
+local starts, tail, vary, k = {%s}, "%s", %s, 0
 request = function()
   k = k + 1
-  return wrk.format("GET", (paths[k %% #paths + 1]:gsub("#", string.format("%%.7f", %d + k * 1e-5))))
+  local start = starts[k %% #starts + 1]
+  if vary then
+    return start .. string.format("%%.7f", %d + k * 1e-5) .. tail
+  end
+  return start .. tail
 end
 """
 
@@ -40,7 +45,8 @@ def requests_with_wrk(port: int, paths: list[str], start: int, cpu: int | None) 
     """Requests per second by wrk."""
     with tempfile.TemporaryDirectory() as folder:
         script = pathlib.Path(folder, "paths.lua")
-        script.write_text(SCRIPT % (", ".join(f'"{path}"' for path in paths), start))
+        starts = ", ".join(f'"GET {path.removesuffix("#")}"' for path in paths)
+        script.write_text(SCRIPT % (starts, TAIL, str(paths[0].endswith("#")).lower(), start))
         command = ["wrk", "-t1", f"-c{CONNECTIONS}", f"-d{SECONDS}s", "-s", str(script), f"http://127.0.0.1:{port}"]
         pin = None if cpu is None else lambda: os.sched_setaffinity(0, {cpu})
         text = subprocess.run(command, capture_output=True, text=True, check=True, preexec_fn=pin).stdout
