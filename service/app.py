@@ -24,13 +24,13 @@ from service.metrics import Metrics
 from service.middleware import Front
 from service.openapi import build_openapi
 from service.problems import MEDIA_TYPE, Problem, nearest_names, problem_of
-from service.routes import QUESTIONS
-from service.routes.health import ROUTES
+from service.routes import QUESTIONS, book, health
 from service.settings import Settings
 from service.work import HeavyWork
 
 LOG = logging.getLogger("sublevel")
 EXPOSED = ["ETag", "Link", "Retry-After", "X-Request-ID", "Sublevel-Release", "Sublevel-Sources", "Sublevel-Warnings"]
+PLAIN_ROUTES = (*health.ROUTES, *book.ROUTES)
 DESCRIPTION = """\
 The numbers behind an atom, its laser beams and a magnetic field. Every number says its unit, its uncertainty and the
 publication it rests on. Frequencies are E/h in MHz and fields in gauss unless a name says otherwise; wavelengths are in
@@ -80,7 +80,7 @@ def build_app(settings: Settings | None = None) -> Application:
     api.state.metrics, api.state.context = metrics, None
     questions = [QuestionRoute(question) for question in QUESTIONS]
     api.router.routes.extend(questions)
-    api.router.routes.extend(ROUTES)
+    api.router.routes.extend(PLAIN_ROUTES)
     document: dict[str, Any] = build_openapi(api, QUESTIONS)
     api.router.routes.extend(docs_routes(document, QUESTIONS))
     api.router.routes.extend(bench_routes())
@@ -119,7 +119,7 @@ async def answer_http_error(request: Request, error: Exception) -> Response:
             "method-not-allowed", detail, given=request.method, allowed=allowed, headers={"Allow": allowed}
         )
     elif error.status_code == 404:
-        paths = [question.path for question in QUESTIONS] + [route.path for route in ROUTES]
+        paths = [question.path for question in QUESTIONS] + [route.path for route in PLAIN_ROUTES]
         near = nearest_names(request.url.path, paths)
         problem = Problem("unknown-path", "there is nothing at this path", given=request.url.path, nearest=near)
     else:

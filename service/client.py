@@ -12,7 +12,19 @@ import httpx2
 from pydantic import BaseModel
 
 from service.problems import ProblemBody
-from service.routes import angular, catalogue, components, field, insensitive, shift, strengths, sublevels, sweep
+from service.routes import (
+    angular,
+    book,
+    catalogue,
+    components,
+    field,
+    insensitive,
+    search,
+    shift,
+    strengths,
+    sublevels,
+    sweep,
+)
 
 Answer = TypeVar("Answer", bound=BaseModel)
 
@@ -60,6 +72,18 @@ class Client:
     def release(self) -> catalogue.ReleaseAnswered:
         """The data release."""
         return self._get("/v1/release", {}, catalogue.ReleaseAnswered)
+
+    def find_lines(self, **asked: Any) -> search.LinesFound:
+        """Lines over all species: `near`, `within`, `unit`, `medium`, `species`, `min_width`, `lower` and others."""
+        return self._get("/v1/lines", asked, search.LinesFound)
+
+    def find_levels(self, **asked: Any) -> search.LevelsFound:
+        """Levels over all species: `level`, `term`, `J`, `min_lifetime` and others."""
+        return self._get("/v1/levels", asked, search.LevelsFound)
+
+    def book(self) -> book.BookAnswered:
+        """The whole book, as published."""
+        return self._get("/v1/book", {}, book.BookAnswered)
 
     def shift(self, atom: str, **asked: Any) -> shift.ShiftAnswered:
         """One component of a line: `line`, `lower`, `upper`, `field`."""

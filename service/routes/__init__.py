@@ -3,13 +3,14 @@
 from service.question import Question
 from service.routes import (
     angular,
+    book,
     catalogue,
     components,
     features,
     field,
-    finding,
     insensitive,
     profile,
+    search,
     shift,
     strengths,
     sublevels,
@@ -28,5 +29,6 @@ QUESTIONS: tuple[Question, ...] = (
     profile.QUESTION,
     *angular.QUESTIONS,
     *catalogue.QUESTIONS,
-    *finding.QUESTIONS,
+    *search.QUESTIONS,
+    book.QUESTION,
 )

@@ -1,8 +1,7 @@
 """The catalogue: atoms, levels, lines, the publications behind them and the release."""
 
-from collections import Counter
 from collections.abc import Iterable, Iterator, Mapping, Sequence
-from dataclasses import fields, replace
+from dataclasses import asdict, fields, replace
 from typing import Any
 
 from pydantic import Field
@@ -10,7 +9,9 @@ from pydantic import Field
 from levels.errors import UnknownName
 from levels.notation import nearest
 from levels.quantity import Quantity
-from levels.records import Atom, Isotope, Level, Line
+from levels.records import Isotope, Level, Line
+from levels.summary import CoolingLine, cooling_lines
+from levels.tally import tally
 from service import VERSION
 from service.answers import NOT_IN_CATALOGUE, Answer, curated, records_table
 from service.context import Context
@@ -18,6 +19,7 @@ from service.question import Asked, Question
 from service.schemas import Answered, Curated, Half, Shape, Texts
 
 Records = list[dict[str, Any]]
+COUNTED = ("values", "checked", "recalled", "computed", "alternatives")
 
 
 class NothingAsked(Asked):
@@ -42,6 +44,22 @@ class AtomsAnswered(Answered):
     atoms: list[AtomRecord]
 
 
+class CoolingRecord(Shape):
+    """A line that might cool, and where its upper level decays besides."""
+
+    line: str
+    aliases: Texts
+    lower: str
+    upper: str
+    wavelength: Curated = Field(description="in vacuum")
+    width: Curated = Field(description="full natural width of the upper level, Gamma/2pi")
+    branching: Curated = Field(description="fraction that decays back on this line")
+    is_cycling: bool = Field(description="J grows by one, so that stretched sublevels decay to one sublevel only")
+    closed: str = Field(description="yes: 99 % or more return; no; unknown: the branching is not in the catalogue")
+    leak_lines: Texts = Field(description="other lines of the upper level: candidates for repumping")
+    leak_levels: Texts = Field(description="where those lead, in the same order")
+
+
 class AtomAnswered(Answered):
     """One isotope."""
 
@@ -60,6 +78,9 @@ class AtomAnswered(Answered):
     quadrupole: Curated = Field(description="nuclear electric quadrupole moment")
     levels: Texts
     lines: Texts
+    cooling_lines: list[CoolingRecord] = Field(
+        description="dipole lines from levels that live long, widest first; whether they are closed as far as is known"
+    )
 
 
 class LevelRecord(Shape):
@@ -127,6 +148,21 @@ class SourceAnswered(Answered):
     csl: dict[str, Any] = Field(description="the entry as a CSL-JSON item")
 
 
+class TallyRecord(Shape):
+    """How much of a species is in the catalogue and how far it was compared."""
+
+    species: str
+    isotopes: int
+    levels: int
+    lines: int
+    values: int
+    checked: int
+    recalled: int
+    computed: int
+    alternatives: int
+    exceptions: int = Field(description="answered findings of the audit")
+
+
 class ReleaseAnswered(Answered):
     """The data release and the program that serves it."""
 
@@ -136,10 +172,13 @@ class ReleaseAnswered(Answered):
     levels: int = Field(description="counted once for each isotope")
     lines: int = Field(description="counted once for each isotope")
     publications: int
-    checked: int = Field(description="values compared with their publication or with an open data set")
-    recalled: int = Field(description="values entered from memory of their publication")
-    computed: int = Field(description="values that follow from others by a stated formula")
+    values: int = Field(description="recommended values")
+    checked: int = Field(description="of them, compared with their publication or with an open data set")
+    recalled: int = Field(description="of them, entered from memory of their publication")
+    computed: int = Field(description="of them, following from others by a stated formula")
+    alternatives: int = Field(description="other published values, kept beside the recommended ones")
     overlaid: Texts = Field(description="species with values of this laboratory's own")
+    tally: list[TallyRecord] = Field(description="the same, species by species")
 
 
 def isotope_record(isotope: Isotope) -> dict[str, Any]:
@@ -225,8 +264,36 @@ def atoms(context: Context, path: Mapping[str, str], asked: Asked) -> Answer:
     return _listed({}, "atoms", [isotope_record(isotope) for isotope in context.catalogue.atoms()], ())
 
 
+def cooling_record(found: CoolingLine) -> dict[str, Any]:
+    """A line that might cool."""
+    line = found.line
+    closed = {True: "yes", False: "no", None: "unknown"}[found.is_closed]
+    return {
+        "line": line.name,
+        "aliases": list(line.aliases),
+        "lower": line.lower.name,
+        "upper": line.upper.name,
+        "wavelength": curated(line.wavelength, "nm"),
+        "width": curated(line.upper.width, "MHz"),
+        "branching": curated(line.branching, "1"),
+        "is_cycling": found.is_cycling,
+        "closed": closed,
+        "leak_lines": [leak.name for leak in found.leaks],
+        "leak_levels": [leak.lower.name for leak in found.leaks],
+    }
+
+
+def cooling_inputs(found: Iterable[CoolingLine]) -> Iterator[tuple[str, Quantity]]:
+    """What the hints on cooling rest on."""
+    for line in (one.line for one in found):
+        parts = (("wavelength", line.wavelength), ("width", line.upper.width), ("branching", line.branching))
+        for name, quantity in parts:
+            if quantity is not None:
+                yield f"{name} of {line.atom} {line.name}", quantity
+
+
 def atom(context: Context, path: Mapping[str, str], asked: Asked) -> Answer:
-    """One isotope: mass, spin, abundance, moments, and the names of its levels and lines."""
+    """One isotope on one screen: mass, spin, abundance, moments, its levels and lines, and what might cool it."""
     found = context.atom(path["atom"])
     isotope = found.isotope
     spinless = NOT_IN_CATALOGUE if isotope.twice_I else "I = 0"
@@ -241,7 +308,10 @@ def atom(context: Context, path: Mapping[str, str], asked: Asked) -> Answer:
         "levels": [level.name for level in found.levels],
         "lines": [line.name for line in found.lines],
     }
-    return Answer(content, used=list(quantities([isotope])))
+    table = records_table([content])
+    cooling = cooling_lines(found)
+    content["cooling_lines"] = [cooling_record(one) for one in cooling]
+    return Answer(content, table, columnar=False, used=[*quantities([isotope]), *cooling_inputs(cooling)])
 
 
 def levels(context: Context, path: Mapping[str, str], asked: Asked) -> Answer:
@@ -278,19 +348,20 @@ def source(context: Context, path: Mapping[str, str], asked: Asked) -> Answer:
 def release(context: Context, path: Mapping[str, str], asked: Asked) -> Answer:
     """The data release, how much it holds, and how much of it was compared with its publication."""
     catalogue = context.catalogue
-    found: list[Atom] = [context.atom(name) for name in catalogue.names]
-    tally = Counter(value.evidence for _, value in everything(context))
+    elements = catalogue.elements.values()
+    rows = [asdict(row) for row in tally(catalogue.elements)]
     content = {
         "version": VERSION,
         "species": len(catalogue.elements),
-        "isotopes": len(found),
-        "levels": sum(len(one.levels) for one in found),
-        "lines": sum(len(one.lines) for one in found),
+        "isotopes": len(catalogue.names),
+        "levels": sum(len(data.isotopes) * len(data.levels) for data in elements),
+        "lines": sum(len(data.isotopes) * len(data.lines) for data in elements),
         "publications": len(context.publications),
-        **{evidence: tally[evidence] for evidence in ("checked", "recalled", "computed")},
+        **{name: sum(row[name] for row in rows) for name in COUNTED},
         "overlaid": list(catalogue.overlaid),
+        "tally": rows,
     }
-    return Answer(content)
+    return Answer(content, records_table(rows), columnar=False)
 
 
 def _question(
