@@ -1,0 +1,176 @@
+"""Walks of an atom from scattering to scattering: where each photon leaves it, and how many it scatters before loss.
+
+A walk stops at lower states that lasers drive, at dark states, and at states whose branching is unknown. From a driven
+state one scattering leads on, by the lasers' excitation rates and the decays that follow; saturation changes how long
+that takes, not where it leads. What is unknown is bounded: the same walks with every unknown decay at its worst and at
+its best, found by policy iteration.
+"""
+
+from collections.abc import Sequence
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from levels import markov
+from levels.branching import METASTABLE
+from levels.decaygraph import Graph
+from levels.lasers import Laser, excitation, resonant_states
+
+Array = NDArray[np.float64]
+Indices = NDArray[np.int64]
+ROUNDING = 1e-12  # of a distribution's sum
+MOST_ROUNDS = 8
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Walk:
+    """The stops of all walks, the start first, and what leads from each to the others.
+
+    `onward` (all states, stops) says where a decay from any state stops next. `moves` (stops, stops) are those of the
+    driven stops; dark stops have none. `choices` lists each stop of unknown branching with its options (options,
+    stops). `cooling` is the share of the first laser in what a stop scatters.
+    """
+
+    graph: Graph
+    lasers: tuple[Laser, ...]
+    rates: tuple[Array, ...]
+    stops: Indices
+    onward: Array
+    moves: Array
+    dark: NDArray[np.bool_]
+    driven: NDArray[np.bool_]
+    choices: tuple[tuple[int, Array], ...]
+    cooling: Array
+
+    def place(self, state: int) -> int:
+        """Return which stop a state is, -1 when it is none."""
+        found = np.flatnonzero(self.stops == state)
+        return int(found[0]) if found.size else -1
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Outcome:
+    """What walks under k sets of lasers come to: photons of the first laser before loss, visits (k, stops).
+
+    `moves` (k, stops, stops) are those walked, `ahead` the photons still to come from each stop, and `chosen`
+    (k, choices) says which option each unknown branching took.
+    """
+
+    photons: Array
+    visits: Array
+    ahead: Array
+    moves: Array
+    chosen: Indices
+
+
+Pumping = Sequence[tuple[int, Array]]  # stops that another laser empties, each with where one scattering leads
+
+
+def dark_states(graph: Graph, dark_after_s: float) -> NDArray[np.bool_]:
+    """Find the states that stay as they are for longer than the given time without light."""
+    metastable = np.array([graph.branchings[state.level.name].closure == METASTABLE for state in graph.states])
+    known = ~np.isnan(graph.rates)
+    slow = np.where(known, graph.rates, np.where(metastable, 0.0, np.inf)) < 1.0 / dark_after_s
+    empty = np.array([len(options) == 0 for options in graph.options])
+    result: NDArray[np.bool_] = slow | empty
+    return result
+
+
+def light_of(graph: Graph, lasers: Sequence[Laser], field_gauss: float) -> list[Array]:
+    """Compute each laser's excitation rates between all states, shape (n, n), lower states as rows."""
+    tables = []
+    for laser in lasers:
+        table = np.zeros((graph.size, graph.size))
+        low, up = graph.spans[laser.line.lower.name], graph.spans[laser.line.upper.name]
+        table[low.start : low.stop, up.start : up.stop] = excitation(graph, laser, field_gauss)
+        tables.append(table)
+    return tables
+
+
+def walk_of(
+    graph: Graph, lasers: Sequence[Laser], dark_after_s: float, field_gauss: float = 0.0, more_stops: Sequence[int] = ()
+) -> Walk:
+    """Set up the walks of an atom under lasers, the first of which cools; `more_stops` are states to stop at too."""
+    tables = light_of(graph, lasers, field_gauss)
+    light = np.sum(tables, axis=0)
+    excited = light.sum(axis=1)
+    resonant = np.zeros(graph.size, dtype=np.bool_)
+    for laser in lasers:
+        resonant[[graph.at(s.level, s.twice_F) for s in resonant_states(graph, laser)]] = True
+    driven = resonant | (excited > 1.0 / dark_after_s)
+    dark = dark_states(graph, dark_after_s) & ~driven
+    unknown = np.array([len(options) > 1 for options in graph.options]) & ~driven & ~dark
+    first = resonant_states(graph, lasers[0])[0]
+    start = graph.at(first.level, first.twice_F)
+    others = driven | dark | unknown
+    others[list(more_stops)] = True
+    others[start] = False
+    stops = np.array([start, *np.flatnonzero(others)])
+    onward = _onward(graph, stops)
+    moves = np.zeros((stops.size, stops.size))
+    cooling = np.zeros(stops.size)
+    for row, state in enumerate(stops):
+        options = graph.options[state]
+        own = 0.0 if np.isnan(graph.rates[state]) else graph.rates[state]
+        if driven[state]:
+            decays = own * (options[0] @ onward) if len(options) else 0.0
+            moves[row] = (light[state] @ onward + decays) / (excited[state] + own)
+            cooling[row] = tables[0][state].sum() / (excited[state] + own)
+        elif not dark[state] and not unknown[state]:
+            moves[row] = options[0] @ onward
+    choices = tuple((row, graph.options[s] @ onward) for row, s in enumerate(stops) if unknown[s])
+    return Walk(graph, tuple(lasers), tuple(tables), stops, onward, moves, dark[stops], driven[stops], choices, cooling)
+
+
+def _onward(graph: Graph, stops: Indices) -> Array:
+    """Follow all decays down to the next stop; states stand by rising energy, so each needs only those before it."""
+    onward = np.zeros((graph.size, stops.size))
+    stopped = np.zeros(graph.size, dtype=np.bool_)
+    stopped[stops] = True
+    onward[stops, np.arange(stops.size)] = 1.0
+    for state in range(graph.size):
+        if not stopped[state] and len(graph.options[state]):
+            onward[state] = graph.options[state][0] @ onward
+    return onward
+
+
+def lost_from(moves: Array, dark: NDArray[np.bool_]) -> Array:
+    """Return what is missing to 1 in each row, without rounding; everything for dark rows."""
+    missing = 1.0 - moves.sum(axis=-1)
+    return np.where(dark, 1.0, np.where(missing > ROUNDING, missing, 0.0))
+
+
+def follow(walk: Walk, pumpings: Sequence[Pumping], worst: bool) -> Outcome:
+    """Walk to the end under each of k extra sets of pumped stops, unknown branching at its worst or at its best."""
+    count, size = len(pumpings), walk.stops.size
+    moves = np.broadcast_to(walk.moves, (count, size, size)).copy()
+    dark = np.broadcast_to(walk.dark, (count, size)).copy()
+    pumped = np.zeros((count, size), dtype=np.bool_)
+    for k, pumping in enumerate(pumpings):
+        for stop, row in pumping:
+            moves[k, stop], dark[k, stop], pumped[k, stop] = row, False, True
+    chosen = np.zeros((count, len(walk.choices)), dtype=np.int64)
+    for _ in range(MOST_ROUNDS):
+        for at, (stop, options) in enumerate(walk.choices):
+            free = ~pumped[:, stop]
+            moves[free, stop] = options[chosen[free, at]]
+        chain = markov.reduce(*markov.closed_off(moves, lost_from(moves, dark)))
+        ahead = markov.values(chain, walk.cooling)
+        better = np.array(
+            [_best(ahead @ options.T, chosen[:, at], worst) for at, (_, options) in enumerate(walk.choices)],
+            dtype=np.int64,
+        ).reshape(len(walk.choices), count)
+        if np.array_equal(better.T, chosen):
+            break
+        chosen = better.T
+    return Outcome(ahead[:, 0], markov.visits(chain), ahead, moves, chosen)
+
+
+def _best(values: Array, now: Indices, worst: bool) -> Indices:
+    """Pick the worst or best option of each set, staying with the present one unless another is clearly better."""
+    signed = -values if worst else values
+    kept = np.take_along_axis(signed, now[:, None], axis=1)[:, 0]
+    top = signed.max(axis=1)
+    result: Indices = np.where(top > kept + 1e-9 * np.abs(kept), signed.argmax(axis=1), now)
+    return result
