@@ -24,6 +24,7 @@ Array = NDArray[np.float64]
 Complex = NDArray[np.complex128]
 RESONANT_WIDTHS = 10.0
 NULL_TOLERANCE = 1e-9
+SHOWN_AMPLITUDE = 1e-3
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -52,7 +53,7 @@ class DarkState:
         parts = [
             f"{_coefficient(value)} |{format_sublevel(*label)}>"
             for label, value in zip(self.labels, self.vector, strict=True)
-            if abs(value) > 1e-6
+            if abs(value) > SHOWN_AMPLITUDE
         ]
         return " + ".join(parts).replace("+ -", "- ")
 

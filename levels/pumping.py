@@ -176,13 +176,19 @@ def _cautions(
         found.append("the steady state depends on where the atoms start: manifolds that never exchange atoms exist")
     if lost_per_s > 0.0:
         found.append(f"atoms are lost at {lost_per_s:.3g} per second; the state is that of the atoms still there")
-    if rates_per_s is not None and abs(rates_per_s - total_per_s) > NOTABLE_DIFFERENCE * max(rates_per_s, total_per_s):
+    if rates_per_s is not None and differ(rates_per_s, total_per_s):
         found.append(
             f"rate equations would mislead: they give {rates_per_s:.3g} photons per second instead of {total_per_s:.3g}"
         )
     if light.model == "rate":
         found += _what_rates_omit(light)
     return tuple(found)
+
+
+def differ(one_per_s: float, other_per_s: float) -> bool:
+    """Tell whether two scattering rates differ notably, and by more than a photon per second."""
+    larger = max(one_per_s, other_per_s)
+    return abs(one_per_s - other_per_s) > NOTABLE_DIFFERENCE * larger and larger > 1.0
 
 
 def _what_rates_omit(light: Light) -> list[str]:
