@@ -1,7 +1,7 @@
 """(a) `shift` requests per second of one worker against a bare route of the same server with a body of the same size.
 
-Every request asks another field, so no kept answer serves it. With `wrk` on the path that is the client, otherwise a
-small one of our own; server and client sit on different CPUs where there are two.
+Every request asks another field between 0 and 1000 G, so no kept answer serves it. With `wrk` on the path that is the
+client, otherwise a small one of our own; server and client sit on different CPUs where there are two.
 """
 
 import os
@@ -29,7 +29,7 @@ request = function()
   k = k + 1
   local start = starts[k %% #starts + 1]
   if vary then
-    return start .. string.format("%%.7f", %d + k * 1e-5) .. tail
+    return start .. string.format("%%.5f", (%d + k * 37.77191) %% 1000) .. tail
   end
   return start .. tail
 end
@@ -65,7 +65,7 @@ def requests_without_wrk(port: int, paths: list[str], start: int) -> float:
         connection, answered = HTTPConnection("127.0.0.1", port), 0
         while time.perf_counter() < until:
             k = next(numbers)
-            connection.request("GET", paths[k % len(paths)].replace("#", f"{start + k * 1e-5:.7f}"))
+            connection.request("GET", paths[k % len(paths)].replace("#", f"{(start + k * 37.77191) % 1000:.5f}"))
             answer = connection.getresponse()
             answer.read()
             if answer.status != 200:
@@ -89,7 +89,7 @@ def run() -> None:
         "--no-access-log", "--no-server-header", "--ws", "none", "--log-level", "warning",
     ]  # fmt: skip
     with server(command, port, 0 if apart else None) as (pid, _):
-        sizes = [len(get(port, path.replace("#", "3.2000001"))[1]) for path in shift_paths()]
+        sizes = [len(get(port, path.replace("#", "345.67891"))[1]) for path in shift_paths()]
         bare = [f"/bare?{round(statistics.mean(sizes))}"]
 
         def rate(paths: list[str], start: int) -> tuple[float, float]:
