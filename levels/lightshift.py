@@ -112,6 +112,7 @@ class Manifold:
     """Every sublevel of a level at one field, in the order of `labels_of`: energies (s,) and blocks by 2m."""
 
     level: Level
+    field_gauss: float
     labels: tuple[Label, ...]
     energy_mhz: Array
     blocks: dict[int, Eigen]
@@ -123,7 +124,7 @@ def manifold(level: Level, field_gauss: float) -> Manifold:
     labels = labels_of(constants)
     blocks = {m: solve_block(constants, m, fields) for m in block_ms(constants.twice_J, constants.twice_I)}
     energy = np.array([blocks[m].energy_mhz[0, blocks[m].twice_F.index(F)] for F, m in labels])
-    return Manifold(level, tuple(labels), energy, blocks)
+    return Manifold(level, field_gauss, tuple(labels), energy, blocks)
 
 
 def solvable(level: Level) -> tuple[Level, tuple[str, ...]]:
