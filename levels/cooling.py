@@ -28,6 +28,7 @@ from levels.records import Atom, Line
 
 Array = NDArray[np.float64]
 Label = tuple[int, int]
+LEAST_DETUNING_MHZ = 1e-9  # nearer to resonance there is no red or blue
 FROM_RATE = "computed: partial rate"
 NARROW = 4.0  # recoil frequencies: below it the Doppler limit is below the recoil temperature
 
@@ -239,7 +240,7 @@ def _case(
     reasons = dict(missing)
     if line.multipole != "E1" or line.photons != 1 or line.induced or strength_model(line) != "J":
         reasons["dipole"] = "defined here for electric-dipole lines of one photon"
-    if setting.detuning_mhz is not None and setting.detuning_mhz >= 0:
+    if setting.detuning_mhz is not None and setting.detuning_mhz > -LEAST_DETUNING_MHZ:
         reasons["red"] = "only red detuning (below zero) cools here"
     if component is None:
         reasons["component"] = "the line has no cycling component (J' is not J + 1): name lower and upper"

@@ -34,13 +34,13 @@ def propagate(function: Callable[[Mapping[str, float]], float], inputs: Mapping[
     """
     values = {name: quantity.value for name, quantity in inputs.items()}
     value = function(values)
-    squares, lacking = 0.0, []
+    spans, lacking = [0.0], []
     for name, quantity in inputs.items():
         if quantity.uncertainty is not None:
-            squares += (_span(function, values, name, quantity.uncertainty) / 2) ** 2
+            spans.append(_span(function, values, name, quantity.uncertainty) / 2)
         elif abs(_span(function, values, name, PROBE * abs(quantity.value))) > PROBE**2 * abs(value):
             lacking.append(name)
-    return Estimate(value, None if lacking else math.sqrt(squares), tuple(lacking))
+    return Estimate(value, None if lacking else math.hypot(*spans), tuple(lacking))
 
 
 def _span(
