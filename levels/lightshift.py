@@ -98,7 +98,7 @@ def scale_mhz2(intensity_mw_per_cm2: float) -> float:
 def shift_of(polarisability_a03: float, intensity_mw_per_cm2: float = 1.0) -> float:
     """Compute the shift -alpha E0^2/4h in MHz of a polarisability in a0^3.
 
-    >>> round(shift_of(1.0) * 1e6, 6)  # Hz in 1 mW/cm2
+    >>> round(shift_of(1.0) * 1e9, 6)  # mHz in 1 mW/cm2
     -0.046876
     """
     if not 0 <= intensity_mw_per_cm2 <= LARGEST_INTENSITY:

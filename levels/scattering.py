@@ -63,7 +63,7 @@ class Scattering:
 
 
 def rate_factor(light: Light, scattered_mhz: Array) -> Array:
-    """Compute the rate in s-1 that a sum of one (e a0)^2 per MHz makes at scattered frequencies in MHz, zero below 0."""
+    """Compute the rate in s-1 that a sum of one (e a0)^2 per MHz makes at scattered frequencies in MHz."""
     omega = 2e6 * np.pi * np.maximum(scattered_mhz, 0.0)
     per_dipole: Array = omega**3 * EA0**2 / (3 * np.pi * EPS0 * HBAR * C**3)
     return per_dipole * scale_mhz2(light.intensity_mw_per_cm2)

@@ -66,7 +66,7 @@ def test_elastic_scattering_is_that_of_the_polarisability() -> None:
 
 
 def test_d_lines_far_off_resonance() -> None:
-    """Linear light far from the D lines induces a dipole s E - i v E x sigma in J = 1/2, and scatters (s^2 + 2 v^2) E^2.
+    """Linear light far from the D lines induces a dipole s E - i v E x sigma, and scatters (s^2 + 2 v^2) E^2.
 
     s and v are the scalar and vector sums over the two lines; hyperfine structure is not resolved there.
     """
