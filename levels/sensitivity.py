@@ -188,7 +188,7 @@ class Weights:
     variances: Array
     unstated: NDArray[np.int64]
     shares: Array
-    mixing: Sequence[bool]
+    mixing: list[bool]
 
 
 def weights_of(terms: Terms) -> Weights:
@@ -209,16 +209,16 @@ def spread(terms: Terms, weights: Weights | None = None) -> Spread:
     shape = terms.numbers.shape[1:]
     rows = terms.numbers.reshape(weights.variances.size, -1)
     stated = np.sqrt(weights.variances @ (rows * rows))
-    if not weights.unstated.size:
+    if not weights.mixing:
         return Spread(stated.reshape(shape), stated.reshape(shape), ())
-    doubts = np.abs(rows[weights.unstated]) * weights.shares
+    doubts = np.abs(rows.take(weights.unstated, axis=0)) * weights.shares
     beyond = doubts > stated
     uncertainty = np.where(np.logical_or.reduce(beyond), np.nan, stated)
-    outweighs, moves = (np.logical_or.reduce(of, axis=1).tolist() for of in (beyond, doubts > 0))
+    outweighs, moves = beyond.tolist(), doubts.tolist()
     excludes = tuple(
         terms.names[row]
-        for row, mixing, one, other in zip(weights.unstated, weights.mixing, outweighs, moves, strict=True)
-        if (one if mixing else other)
+        for row, mixing, one, other in zip(weights.unstated.tolist(), weights.mixing, outweighs, moves, strict=True)
+        if any(one if mixing else other)
     )
     return Spread(uncertainty.reshape(shape), stated.reshape(shape), excludes)
 

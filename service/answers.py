@@ -8,7 +8,7 @@ from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import dataclass
 from functools import cached_property
 from math import isfinite, isnan
-from typing import Any
+from typing import Any, NamedTuple
 
 import numpy as np
 import orjson
@@ -55,8 +55,7 @@ def basis_of(used: Used, publications: Mapping[str, Publication]) -> Basis:
     return used if isinstance(used, Basis) else Basis(tuple(used), publications)
 
 
-@dataclass(frozen=True, slots=True)
-class Answer:
+class Answer(NamedTuple):
     """What a question is answered with: its own members, perhaps a table, and what the numbers rest on.
 
     `used` has the curated inputs: sources and the refusal of recalled inputs come from it.

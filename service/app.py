@@ -14,7 +14,7 @@ from starlette.responses import Response
 from starlette.types import ASGIApp, Receive, Scope, Send
 
 from service import VERSION
-from service.asking import QuestionRoute
+from service.asking import QuestionRoute, Running
 from service.bench import bench_routes
 from service.cache import AnswerCache
 from service.context import build_context
@@ -56,12 +56,11 @@ def build_app(settings: Settings | None = None) -> Application:
     @asynccontextmanager
     async def lifespan(app: FastAPI) -> AsyncIterator[None]:
         heavy = HeavyWork(settings)
-        app.state.cache, app.state.heavy = AnswerCache(settings.cache_bytes), heavy
-        app.state.context = build_context(settings)
+        app.state.running = Running(build_context(settings), AnswerCache(settings.cache_bytes), heavy)
         gc.collect()
         gc.freeze()  # the catalogue stays: a collection need not walk through it again and again
         yield
-        app.state.context = None
+        app.state.running = None
         heavy.close()
 
     api = FastAPI(
@@ -77,7 +76,7 @@ def build_app(settings: Settings | None = None) -> Application:
         telemetry={"tracing": False, "metrics": False, "logs": False, "operation_spans": False},
         exception_handlers={HTTPException: answer_http_error, Problem: answer_problem, Exception: answer_error},
     )
-    api.state.metrics, api.state.context = metrics, None
+    api.state.metrics, api.state.running = metrics, None
     questions = [QuestionRoute(question) for question in QUESTIONS]
     api.router.routes.extend(questions)
     api.router.routes.extend(PLAIN_ROUTES)

@@ -8,8 +8,7 @@ import itertools
 import logging
 import time
 from collections.abc import Iterator, Mapping
-from dataclasses import dataclass
-from typing import Any
+from typing import Any, NamedTuple
 from urllib.parse import unquote_plus
 
 import orjson
@@ -46,8 +45,7 @@ WORTH_KEEPING_SECONDS = 1e-4  # what is computed more quickly is not worth the m
 CONTENT_HEADERS = (b"content-type", b"content-length")
 
 
-@dataclass(frozen=True, slots=True)
-class Work:
+class Work(NamedTuple):
     """One question that has been read: what remains is to answer it and to write the answer."""
 
     question: Question
@@ -83,6 +81,14 @@ class Work:
         return json_pieces({"query": orjson.Fragment(self.echo), **answer.content}, inline, after)
 
 
+class Running(NamedTuple):
+    """What a started application answers with."""
+
+    context: Context
+    cache: AnswerCache
+    heavy: HeavyWork
+
+
 class QuestionRoute(APIRoute):
     """A question as a route of the application."""
 
@@ -113,16 +119,15 @@ class QuestionRoute(APIRoute):
             await _send(reply, send)
 
     async def _reply(self, scope: Scope, receive: Receive) -> Reply:
-        state = scope["app"].state
-        context: Context | None = state.context
-        if context is None:
+        running: Running | None = scope["app"].state.running
+        if running is None:
             raise Problem("not-ready", "the catalogue is not loaded", headers={"Retry-After": "1"})
+        context, cache, heavy = running
         accept, if_none_match, content_type = _headers(scope)
         if self.question.method == "POST":
             body = await _body(receive, content_type, context.settings.max_body_bytes)
             work = self._work(context, scope, read_body(self.question, body), accept)
-            return await self._computed(work, state.heavy)
-        cache: AnswerCache = state.cache
+            return await self._computed(work, heavy)
         key = (scope["path"], scope["query_string"], accept)
         reply = cache.get(key)
         if reply is None:
@@ -133,7 +138,7 @@ class QuestionRoute(APIRoute):
             if if_none_match and if_none_match != b"*" and etag_matches(if_none_match, tag):
                 return Reply(304, _framing(tag, work.row))
             started = time.perf_counter()
-            reply = await self._computed(work, state.heavy, tag)
+            reply = await self._computed(work, heavy, tag)
             if isinstance(reply.body, bytes) and time.perf_counter() - started > WORTH_KEEPING_SECONDS:
                 cache.put(key, reply)
         if if_none_match and (if_none_match == b"*" or etag_matches(if_none_match, reply.tag)):

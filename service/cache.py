@@ -2,7 +2,7 @@
 
 from collections import OrderedDict
 from collections.abc import Iterator
-from dataclasses import dataclass
+from typing import NamedTuple
 
 Key = tuple[str, bytes, bytes]
 
@@ -10,8 +10,7 @@ Key = tuple[str, bytes, bytes]
 Headers = tuple[tuple[bytes, bytes], ...]
 
 
-@dataclass(frozen=True, slots=True)
-class Reply:
+class Reply(NamedTuple):
     """An answer as it goes over the wire; a body in pieces is sent as it is written."""
 
     status: int

@@ -40,7 +40,10 @@ def _reader(dimension: str, unit: str, low: float, high: float) -> BeforeValidat
     allowed = f"from {low:.12g} to {high:.12g} {unit}"
 
     def read(given: Any) -> float:
-        value = parse_quantity_input(_plus(_text(given, dimension, allowed)), dimension, unit)
+        if isinstance(given, str) and given.isascii() and given.replace(".", "", 1).isdigit() and len(given) < 25:
+            value = float(given)  # a plain number, as programs send it, need not be taken apart
+        else:
+            value = parse_quantity_input(_plus(_text(given, dimension, allowed)), dimension, unit)
         if not low <= value <= high:
             raise OutsideValidity(dimension, shown(str(given)), allowed)
         return value

@@ -17,10 +17,10 @@ async def live(request: Request) -> Response:
 
 async def ready(request: Request) -> Response:
     """The catalogue is loaded and questions are answered."""
-    context = getattr(request.app.state, "context", None)
-    if context is None:
+    running = request.app.state.running
+    if running is None:
         raise Problem("not-ready", "the catalogue is not loaded", headers={"Retry-After": "1"})
-    return JSONResponse({"status": "ready", "release": context.release}, headers=NO_STORE)
+    return JSONResponse({"status": "ready", "release": running.context.release}, headers=NO_STORE)
 
 
 async def metrics(request: Request) -> Response:

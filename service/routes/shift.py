@@ -1,6 +1,7 @@
 """`shift`: what one component of a line does in a field."""
 
 from collections.abc import Mapping
+from functools import lru_cache
 
 from pydantic import Field
 
@@ -17,6 +18,9 @@ from service.schemas import Answered, Half, Scalar
 NO_CENTROID = "the frequency of this line's centroid is not in the catalogue"
 NO_STRENGTH = "the line is opened by the field alone: its strength is not in this model"
 NO_UNCERTAINTY = "the uncertainty of this line's centroid is not stated"
+
+
+_polarisation = lru_cache(16)(format_polarisation)
 
 
 class ShiftAsked(Computed):
@@ -77,13 +81,13 @@ def labels(line: Line, found: Component) -> dict[str, str | float]:
         "upper_level": line.upper.name,
         "upper_F": found.upper[0] / 2,
         "upper_m": found.upper[1] / 2,
-        "polarisation": format_polarisation(found.q),
+        "polarisation": _polarisation(found.q),
     }
 
 
 def numbers(found: Component) -> dict[str, object]:
     """What the component does."""
-    spread, stated = (array[:, 0, 0].tolist() for array in (found.spread.uncertainty, found.spread.stated))
+    spread, stated = (array.ravel().tolist() for array in (found.spread.uncertainty, found.spread.stated))
     known = found.strength_known
     return {
         "frequency": _frequency(found),

@@ -165,7 +165,7 @@ def test_304_needs_no_computation(client: TestClient, app: Any, monkeypatch: pyt
     url = "/v1/atoms/87Rb/shift?line=780&lower=1,0&upper=2,1&field=77"
     tag = client.get(url).headers["etag"]
     route = next(route for route in app.api.router.routes if getattr(route, "name", "") == "shift")
-    monkeypatch.setattr(app.api.state.cache, "get", lambda key: None)
+    monkeypatch.setattr(app.api.state.running.cache, "get", lambda key: None)
     monkeypatch.setattr("service.asking.Work.answer", lambda self: pytest.fail("computed"))
     assert client.get(url, headers={"If-None-Match": tag}).status_code == 304
     assert route.path == "/v1/atoms/{atom}/shift"
