@@ -2,10 +2,10 @@
 
 Every repumper is tried alone; where none closes the cycle, pairs are tried, and larger sets are grown from the best
 pairs and from the best repumper of each leak. Sets are ranked by the photons before loss that published branching
-guarantees, then by what unknown branching may allow at best. Among equals come first: fewer lasers; a sure way back (by
-orders of magnitude); light between 350 and 1700 nm, where lasers are common (common practice, no law); electric-dipole
-lines; the driven line itself; fewer photons for each leak. A set beyond these bounds is not tried, and the answer says
-how far the search went.
+guarantees, then by what unknown branching may allow at best. Among equals come first: fewer lasers; light between 350
+and 1700 nm, where lasers are common (common practice, no law); electric-dipole lines; a surer way back (by half orders
+of magnitude); the driven line itself; fewer photons for each leak. A set beyond these bounds is not tried, and the
+answer says how far the search went.
 """
 
 from collections.abc import Iterable, Sequence
@@ -101,7 +101,7 @@ def _pairs(
         bounds.append(f"pairs were searched among the best {MOST_PAIRED} of {len(ranked)} repumpers")
     if len(pairs) > MOST_PAIRS:
         bounds.append(f"{MOST_PAIRS} of {len(pairs)} pairs were tried")
-    return list(dict.fromkeys(pairs))[:MOST_PAIRS]
+    return list({_keys(pair): pair for pair in pairs}.values())[:MOST_PAIRS]
 
 
 def _are_apart(some: Sequence[Repumper]) -> bool:
@@ -110,21 +110,26 @@ def _are_apart(some: Sequence[Repumper]) -> bool:
     return len(set(lows)) == len(lows)
 
 
+def _keys(some: Iterable[Repumper]) -> frozenset[object]:
+    """Return what tells one set of repumpers from another."""
+    return frozenset(one.key for one in some)
+
+
 def _grown(
     tried: "Tried", singles: Sequence[Scheme], pairs: Sequence[Scheme], second: Sequence[Repumper], bounds: list[str]
 ) -> list[Scheme]:
     """Grow larger sets: from the best pairs laser by laser, and from the best repumper of each leak at once."""
     ranked = [one.repumpers[0] for one in sorted(singles, key=tried.rank)]
     of_each = tuple({one.empties.name: one for one in reversed(ranked)}.values())
-    found: list[Scheme] = []
-    if len(of_each) > 2 and _are_apart(of_each):
-        found += tried.schemes([of_each])
+    found = tried.schemes([of_each]) if len(of_each) > 2 and _are_apart(of_each) else []
+    done = {_keys(one.repumpers) for one in found}
     front = [one.repumpers for one in sorted(pairs, key=tried.rank)[:GROWN_FROM]]
     pool = [*ranked[:MOST_PAIRED], *second[:MOST_PAIRED]]
     for _size in range(3, MOST_LASERS + 1):
         larger = [(*some, one) for some in front for one in pool if _are_apart((*some, one))]
-        schemes = tried.schemes(list({frozenset(some): some for some in larger}.values()))
-        found += schemes
+        schemes = tried.schemes(list({_keys(some): some for some in larger}.values()))
+        found += [one for one in schemes if _keys(one.repumpers) not in done]
+        done |= {_keys(one.repumpers) for one in schemes}
         front = [one.repumpers for one in sorted(schemes, key=tried.rank)[:1]]
         if any(one.is_closed for one in found) or not front:
             break
@@ -138,12 +143,13 @@ class Tried:
     def __init__(self, walk: Walk, leaks: Leaks) -> None:
         self.walk, self.leaks = walk, leaks
         self.known = {item.position for item in leaks.reached}
+        self.base = follow(walk, [()], worst=True)
         self.chance, self.paths = self._chance(), self._paths()
         self.cooling = leaks.walk.lasers[0].line
 
     def _chance(self) -> Array:
         """The chance of return from every stop under the present lasers, unknown branching at its worst."""
-        walk, base = self.walk, follow(self.walk, [()], worst=True)
+        walk, base = self.walk, self.base
         chance = np.where(walk.driven, 1.0, 0.0)
         free = ~walk.driven & ~walk.dark
         for _ in range(walk.stops.size):
@@ -219,9 +225,9 @@ class Tried:
             _level(scheme.photons),
             _level(scheme.most),
             len(lines),
-            -round(float(np.log10(max(scheme.returning, 1e-9)))),
             sum(not COMMON_NM[0] <= line.nominal_nm <= COMMON_NM[1] for line in lines),
             sum(line.multipole != "E1" for line in lines),
+            -round(2 * float(np.log10(max(scheme.returning, 1e-9)))),
             sum(line.name != self.cooling.name for line in lines),
             round(scheme.per_leak, 3),
             [line.nominal_nm for line in lines],

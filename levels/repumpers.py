@@ -29,6 +29,11 @@ class Repumper:
     pumped: tuple[tuple[int, int], ...]  # lower and upper states in the graph
 
     @property
+    def key(self) -> tuple[str, tuple[Component, ...]]:
+        """What tells it from others of the same atom."""
+        return self.line.name, self.components
+
+    @property
     def empties(self) -> Level:
         """The level that it empties."""
         return self.line.lower

@@ -42,11 +42,11 @@ class Walk:
     driven: NDArray[np.bool_]
     choices: tuple[tuple[int, Array], ...]
     cooling: Array
+    places: dict[int, int]
 
     def place(self, state: int) -> int:
         """Return which stop a state is, -1 when it is none."""
-        found = np.flatnonzero(self.stops == state)
-        return int(found[0]) if found.size else -1
+        return self.places.get(state, -1)
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -120,7 +120,9 @@ def walk_of(
         elif not dark[state] and not unknown[state]:
             moves[row] = options[0] @ onward
     choices = tuple((row, graph.options[s] @ onward) for row, s in enumerate(stops) if unknown[s])
-    return Walk(graph, tuple(lasers), tuple(tables), stops, onward, moves, dark[stops], driven[stops], choices, cooling)
+    places = {int(state): k for k, state in enumerate(stops)}
+    marks = (dark[stops], driven[stops])
+    return Walk(graph, tuple(lasers), tuple(tables), stops, onward, moves, *marks, choices, cooling, places)
 
 
 def _onward(graph: Graph, stops: Indices) -> Array:
@@ -142,7 +144,10 @@ def lost_from(moves: Array, dark: NDArray[np.bool_]) -> Array:
 
 
 def follow(walk: Walk, pumpings: Sequence[Pumping], worst: bool) -> Outcome:
-    """Walk to the end under each of k extra sets of pumped stops, unknown branching at its worst or at its best."""
+    """Walk to the end under each of k extra sets of pumped stops, unknown branching at its worst or at its best.
+
+    Unknown branching that leads back to a pumped stop is no loss: the next decay may go elsewhere.
+    """
     count, size = len(pumpings), walk.stops.size
     moves = np.broadcast_to(walk.moves, (count, size, size)).copy()
     dark = np.broadcast_to(walk.dark, (count, size)).copy()
@@ -150,13 +155,15 @@ def follow(walk: Walk, pumpings: Sequence[Pumping], worst: bool) -> Outcome:
     for k, pumping in enumerate(pumpings):
         for stop, row in pumping:
             moves[k, stop], dark[k, stop], pumped[k, stop] = row, False, True
-    chosen = np.zeros((count, len(walk.choices)), dtype=np.int64)
+    kept = _alive(walk, moves, dark)
+    chosen = _leading_home(walk, moves, pumped)
     for _ in range(MOST_ROUNDS):
         for at, (stop, options) in enumerate(walk.choices):
             free = ~pumped[:, stop]
             moves[free, stop] = options[chosen[free, at]]
-        chain = markov.reduce(*markov.closed_off(moves, lost_from(moves, dark)))
-        ahead = markov.values(chain, walk.cooling)
+        chain = _chain(moves, dark, kept)
+        ahead = np.zeros((count, size))
+        ahead[:, kept] = markov.values(chain, walk.cooling[kept])
         better = np.array(
             [_best(ahead @ options.T, chosen[:, at], worst) for at, (_, options) in enumerate(walk.choices)],
             dtype=np.int64,
@@ -164,7 +171,55 @@ def follow(walk: Walk, pumpings: Sequence[Pumping], worst: bool) -> Outcome:
         if np.array_equal(better.T, chosen):
             break
         chosen = better.T
-    return Outcome(ahead[:, 0], markov.visits(chain), ahead, moves, chosen)
+    visits = np.zeros((count, size))
+    visits[:, kept] = markov.visits(chain)
+    return Outcome(ahead[:, 0], visits, ahead, moves, chosen)
+
+
+def _leading_home(walk: Walk, moves: Array, pumped: NDArray[np.bool_]) -> Indices:
+    """Choose for each unknown branching an option from which the start can be reached, where there is one.
+
+    From such choices policy iteration never runs into an endless loop that another option would leave.
+    """
+    count, size = pumped.shape
+    chosen = np.zeros((count, len(walk.choices)), dtype=np.int64)
+    links = (moves > 0).astype(np.float64)
+    home = np.zeros((count, size))
+    home[:, 0] = 1.0
+    while True:
+        wider = np.maximum(home, (links @ home[..., None])[..., 0] > 0)
+        for at, (stop, options) in enumerate(walk.choices):
+            reach = home @ options.T
+            new = (reach.max(axis=1) > 0) & (home[:, stop] == 0) & ~pumped[:, stop]
+            chosen[new, at] = reach[new].argmax(axis=1)
+            wider[new, stop] = 1.0
+        if np.array_equal(wider, home):
+            return chosen
+        home = wider
+
+
+def _alive(walk: Walk, moves: Array, dark: NDArray[np.bool_]) -> Indices:
+    """List the stops that some walk may reach and leave again; the chain needs no others."""
+    links = np.asarray((moves > 0).any(axis=0))
+    for stop, options in walk.choices:
+        links[stop] |= (options > 0).any(axis=0)
+    reached = np.zeros(walk.stops.size, dtype=np.bool_)
+    reached[0] = True
+    for _ in range(walk.stops.size):
+        wider = reached | links[reached].any(axis=0)
+        if np.array_equal(wider, reached):
+            break
+        reached = wider
+    return np.flatnonzero(reached & ~dark.all(axis=0))
+
+
+def _chain(moves: Array, dark: NDArray[np.bool_], kept: Indices) -> markov.Reduced:
+    """Eliminate the stops that are kept; what leads to the others is lost."""
+    inner = moves[:, kept[:, None], kept]
+    others = np.ones(moves.shape[-1], dtype=np.bool_)
+    others[kept] = False
+    loss = lost_from(moves, dark)[:, kept] + moves[:, kept][:, :, others].sum(axis=-1)
+    return markov.reduce(*markov.closed_off(inner, loss))
 
 
 def _best(values: Array, now: Indices, worst: bool) -> Indices:
