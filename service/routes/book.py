@@ -10,6 +10,7 @@ from starlette.routing import Route
 
 from service import VERSION
 from service.answers import Answer
+from service.asking import Running
 from service.book import (
     isotope_rows,
     level_rows,
@@ -140,9 +141,10 @@ def answer_book(context: Context, path: Mapping[str, str], asked: BookAsked) -> 
 async def book_zip(request: Request) -> Response:
     """The whole book as a zip of CSV files; the same release has the same bytes."""
     state = request.app.state
-    context: Context | None = state.context
-    if context is None:
+    running: Running | None = state.running
+    if running is None:
         raise Problem("not-ready", "the catalogue is not loaded", headers={"Retry-After": "1"})
+    context = running.context
     if request.query_params:
         unknown = next(iter(request.query_params))
         detail = f"{ZIP} has no parameter {unknown!r}"
@@ -155,7 +157,7 @@ async def book_zip(request: Request) -> Response:
         return Response(status_code=304, headers=headers)
     packed = getattr(state, "book", None)
     if packed is None or packed[0] != tag:
-        packed = tag, await state.heavy.run(lambda: zip_of(context.catalogue, context.publications))
+        packed = tag, await running.heavy.run(lambda: zip_of(context.catalogue, context.publications))
         state.book = packed
     disposition = f'attachment; filename="sublevel-book-{context.release.partition("+")[0]}.zip"'
     headers["Content-Disposition"] = disposition
