@@ -24,7 +24,7 @@ BAD = {
     "bad digits": ('[isotopes.87]\ng_I = { value = "-0.00099(" }\n', "isotopes.87.g_I", "digits"),
     "no such isotope": (
         '[levels."5p_2P3/2".hyperfine.88]\nA = { value = "84.7 MHz" }\n',
-        "hyperfine.88",
+        "5p_2P3/2",
         "no isotope 88",
     ),
     "no such level": ('[lines.780]\nupper = "5p_2P5/2"\n', "lines.780", "no level"),
