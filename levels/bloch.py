@@ -43,6 +43,7 @@ class Bloch:
 
     `coherence_decay` has the rates of all coherences (its diagonal is `decay`), `lost` the outflow per sublevel that
     leaves the list of levels. `hops` are the single moves (end, start) of incoherent light with their rates.
+    `group` numbers the level of each sublevel.
     """
 
     energy: Array
@@ -52,6 +53,7 @@ class Bloch:
     jumps: tuple[Jump, ...]
     hops: tuple[Indices, Indices, Array]
     lost: Array
+    group: Indices
 
     @property
     def size(self) -> int:
@@ -84,6 +86,7 @@ def bloch_of(drive: Drive, frame: Frame) -> Bloch:
         tuple(_emission(drive, frame)),
         (end, start, hopping[end, start]),
         structure.lost_per_s * 1e-6,
+        structure.level_index,
     )
 
 
@@ -118,12 +121,12 @@ def reachable(bloch: Bloch, populated: NDArray[np.bool_] | None = None) -> NDArr
 
     `populated` tells which sublevels may start with atoms (all, when not given).
     """
-    links = (bloch.coupling != 0).astype(np.float64)
-    moves = np.zeros((len(bloch.jumps), bloch.size, bloch.size))
+    links = (bloch.coupling != 0).astype(np.float32)
+    moves = np.zeros((len(bloch.jumps), bloch.size, bloch.size), dtype=np.float32)
     for move, jump in zip(moves, bloch.jumps, strict=True):
         move[jump.end, jump.start] = 1.0
     end, start, _ = bloch.hops
-    pattern = np.diag(np.ones(bloch.size) if populated is None else populated.astype(np.float64))
+    pattern = np.diag(np.ones(bloch.size) if populated is None else populated).astype(np.float32)
     count = -1
     while count != (now := int(np.count_nonzero(pattern))):
         count = now
@@ -132,7 +135,7 @@ def reachable(bloch: Bloch, populated: NDArray[np.bool_] | None = None) -> NDArr
         for move in moves:
             grown += move @ pattern @ move.T
         grown[end, end] += pattern[start, start]
-        pattern = (grown > 0).astype(np.float64)
+        pattern = (grown > 0).astype(np.float32)
     result: NDArray[np.bool_] = pattern > 0
     return result
 

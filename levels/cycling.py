@@ -141,6 +141,7 @@ def restricted(bloch: Bloch, keep: NDArray[np.int64]) -> Bloch:
         jumps=tuple(jump for jump in jumps if jump.end.size),
         hops=(place[end[inside]], place[start[inside]], rate[inside]),
         lost=np.maximum(bloch.decay - arriving, 0.0)[keep],
+        group=bloch.group[keep],
     )
 
 

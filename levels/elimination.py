@@ -15,8 +15,6 @@ from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import NDArray
-from scipy.sparse import csc_matrix
-from scipy.sparse.csgraph import connected_components
 
 from levels.bloch import (
     Array,
@@ -57,14 +55,27 @@ class Reduced:
 
 
 def two_sets(bloch: Bloch) -> NDArray[np.bool_] | None:
-    """Tell which sublevels belong to set B, or return None when the light joins no two sets."""
-    N = bloch.size
-    links = bloch.coupling != 0
-    doubled = csc_matrix(np.block([[np.zeros_like(links), links], [links, np.zeros_like(links)]]))
-    _, part = connected_components(doubled, directed=False)
-    if np.any(part[:N] == part[N:]):
-        return None
-    upper: NDArray[np.bool_] = part[:N] > part[N:]
+    """Tell which sublevels belong to set B, or return None when the light joins no two sets.
+
+    Whole groups (levels) are coloured in turn: each the other colour than those that light joins it to.
+    """
+    rows, columns = np.nonzero(bloch.coupling)
+    linked = np.zeros((int(bloch.group.max()) + 1,) * 2, dtype=np.bool_)
+    linked[bloch.group[rows], bloch.group[columns]] = True
+    colour = np.full(linked.shape[0], -1)
+    for first in range(colour.size):
+        if colour[first] >= 0:
+            continue
+        colour[first], waiting = 0, [first]
+        while waiting:
+            now = waiting.pop()
+            for other in np.flatnonzero(linked[now]).tolist():
+                if colour[other] == colour[now]:
+                    return None
+                if colour[other] < 0:
+                    colour[other] = 1 - colour[now]
+                    waiting.append(other)
+    upper: NDArray[np.bool_] = colour[bloch.group] == 1
     return upper
 
 
@@ -120,23 +131,25 @@ def _exchange(V: Complex, K: Complex, A: Indices, B: Indices) -> Iterable[Triple
 
 
 def _loss(V: Complex, K: Complex, A: Indices, B: Indices, pattern: NDArray[np.bool_]) -> Iterable[Triplets]:
-    """Give what light takes from a and b: -V^+ (K o V a) and -(K o b V) V^+, with their hermitian conjugates."""
-    below = K.T @ (V.conj()[:, :, None] * V[:, None, :]).reshape(
-        B.size, -1
-    )  # k, then (j, l): row (j, k), column (l, k)
-    yield _one_sided(-below.conj(), A, pattern)
-    above = K @ (V.T[:, :, None] * V.T.conj()[:, None, :]).reshape(
-        A.size, -1
-    )  # i, then (p, m): row (i, m), column (i, p)
-    yield _one_sided(-above.reshape(B.size, B.size, B.size).swapaxes(1, 2), B, pattern)
+    """Give what light takes from b and a: -(K o b V) V^+ and -V^+ (K o V a), with their hermitian conjugates.
+
+    The second is the first with V^+ and K^+ in the place of V and K.
+    """
+    yield _one_sided(V, K, B, pattern)
+    yield _one_sided(V.conj().T, K.conj().T, A, pattern)
 
 
-def _one_sided(value: Complex, at: Indices, pattern: NDArray[np.bool_]) -> Triplets:
-    """List rho[i, m] += value[i, m, p] rho[i, p] + h.c. by rows on or above the diagonal."""
-    value = value.reshape(at.size, at.size, at.size)
+def _one_sided(V: Complex, K: Complex, at: Indices, pattern: NDArray[np.bool_]) -> Triplets:
+    """List rho[i, m] -= sum_l K[i, l] V[p, l] V*[m, l] rho[i, p] + h.c. by rows on or above the diagonal."""
     inside = pattern[np.ix_(at, at)]
-    i, m, p = np.nonzero((value != 0) & inside[:, :, None] & inside[:, None, :])
-    found = value[i, m, p]
+    i, m, p = np.nonzero(inside[:, :, None] & inside[:, None, :])
+    if 4 * i.size < inside.size * at.size:
+        found = -np.einsum("tl,tl,tl->t", K[i], V[p], V[m].conj())
+    else:
+        whole = K @ (V.T[:, :, None] * V.T.conj()[:, None, :]).reshape(V.shape[1], -1)  # i, then (p, m)
+        found = -whole.reshape(at.size, at.size, at.size)[i, p, m]
+    driven = found != 0
+    i, m, p, found = i[driven], m[driven], p[driven], found[driven]
     found = np.where(i > m, found.conj(), np.where(i == m, 2 * found, found))
     upright = i <= m
     row, column = np.where(upright, i, m), np.where(upright, m, i)

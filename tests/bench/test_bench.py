@@ -3,7 +3,7 @@
 import numpy as np
 import pytest
 
-from tests.bench import algebra, spectra
+from tests.bench import algebra, spectra, steady
 
 
 @pytest.mark.parametrize("case", spectra.CASES, ids=[case[0] for case in spectra.CASES])
@@ -22,3 +22,10 @@ def test_both_ways_give_the_same_strengths() -> None:
     """sympy called naively and the library give the same eight fractions of the Cs D2 line."""
     assert algebra.ours() == algebra.naive()
     assert sum(algebra.ours()) == 2
+
+
+@pytest.mark.parametrize("case", steady.CASES, ids=[case.name for case in steady.CASES])
+def test_both_ways_give_the_same_state(case: steady.Case) -> None:
+    """The general library and ours give the same density matrix, element by element."""
+    bloch = steady.equations(case)
+    assert steady.ours(bloch) == pytest.approx(steady.plain(steady.liouvillian(bloch)), abs=1e-11)

@@ -46,7 +46,7 @@ def hand_made(energy, coupling, jumps):
     none = (np.zeros(0, int), np.zeros(0, int), np.zeros(0))
     H = np.array(coupling, dtype=complex)
     coherence = (decay[:, None] + decay[None, :]) / 2
-    return Bloch(np.array(energy, float), H + H.conj().T, decay, coherence, operators, none, np.zeros(N))
+    return Bloch(np.array(energy, float), H + H.conj().T, decay, coherence, operators, none, np.zeros(N), np.arange(N))
 
 
 @given(st.floats(0.01, 100.0), st.floats(-30.0, 30.0))

@@ -142,7 +142,7 @@ def test_two_dark_states_of_the_d_level(book: Catalogue, atom, angle) -> None:
 @pytest.mark.parametrize("atom", list(IONS))
 def test_field_for_the_ion(book: Catalogue, atom) -> None:
     """The worked case: scattering of the eight-level ion over field magnitude and angle. Light along the field is
-    worst; the best field turns the dark states at a rate between a thirtieth and about the natural width (same source: rates
+    worst; the best field turns the dark states at a rate between a fiftieth and the natural width (same source: rates
     comparable with the Rabi frequency), at an angle well off the polarisation."""
     scheme = ion_scheme(book, atom, (0, 0, 1.0))
     width = float(drive_of(scheme).structure.width_mhz.max())
@@ -151,7 +151,7 @@ def test_field_for_the_ion(book: Catalogue, atom) -> None:
     rates = scan.scattering_per_s
     magnitude, angle, best = scan.best
     assert rates[:, 0].max() < 1e-4 * best
-    assert 0.02 * width < 1.4 * magnitude < 1.0 * width
+    assert width / 50 < 1.4 * magnitude < width
     assert angle >= 30.0
     assert rates[0].max() < 0.2 * best
     assert rates[-1].max() < best
