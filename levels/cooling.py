@@ -106,8 +106,13 @@ def constants_of_line(atom: Atom, line: Line) -> tuple[dict[str, Quantity], dict
 
 
 def _share_of_decays(line: Line) -> dict[str, Quantity]:
-    """Return the branching fraction, or the rate where that is what was published: each uncertainty enters once."""
+    """Return the branching fraction, or the rate where that is what was published: each uncertainty enters once.
+
+    A rate that is larger than the upper level's whole rate, from another publication, is taken as all of it.
+    """
     fraction, rate = line.branching, line.einstein_A
+    if fraction is not None and fraction.value > 1:
+        return {"branching": replace(in_unit(fraction, "1"), value=1.0)}
     if fraction is not None and not (rate is not None and fraction.note.startswith(FROM_RATE)):
         exact = fraction.value == 1 and fraction.evidence == "computed"
         return {"branching": replace(fraction, uncertainty=0.0) if exact else in_unit(fraction, "1")}

@@ -120,6 +120,8 @@ def test_what_leaks_saturates_later() -> None:
     third = cooling(atom_of(only_rate), only_rate).figures["saturation_intensity"]
     assert third.value == pytest.approx(one.value * 2 * math.pi * 6.0666e6 / 1.9e7, rel=1e-12)
     assert third.uncertainty / third.value == pytest.approx(math.hypot(2 * 3e-4, 1e-2), rel=1e-3)
+    whole = replace(D2, branching=quantity(1.03, 0.05))  # a rate above the whole width is all of it
+    assert cooling(RB, whole).figures["saturation_intensity"].value == pytest.approx(one.value)
 
 
 @given(st.floats(-30, 30), st.floats(0.01, 50), st.floats(-60, 60))

@@ -6,9 +6,11 @@ from memory of the cited publication, `PRACTICE` that laboratories say so withou
 published uncertainty, half of the last printed digit, or what the row's reason says; none was widened to pass.
 """
 
-from tests.published.checks import clocks, intervals, moments, patterns, slopes, values
+from tests.published.checks import clocks, cooling, intervals, moments, patterns, slopes, strongfields, values
 from tests.published.checks.table import Check
 
 CHECKS: tuple[Check, ...] = tuple(
-    check for module in (clocks, slopes, intervals, patterns, moments, values) for check in module.CHECKS
+    check
+    for module in (clocks, slopes, intervals, patterns, moments, values, cooling, strongfields)
+    for check in module.CHECKS
 )
