@@ -132,7 +132,7 @@ def line_record(name: str, table: LineTable, lower: Level, upper: Level, centroi
         lower=lower,
         upper=upper,
         multipole=table.multipole,
-        rank=MULTIPOLE_RANK[table.multipole],
+        rank=_rank(table, lower, upper),
         aliases=table.aliases,
         nominal_nm=table.nominal_nm,
         photons=table.photons,
@@ -146,6 +146,16 @@ def line_record(name: str, table: LineTable, lower: Level, upper: Level, centroi
         reduced_dipole=dipole,
         notes=tuple(filter(None, notes)),
     )
+
+
+def _rank(table: LineTable, lower: Level, upper: Level) -> int:
+    """The rank of what drives the line: of its multipole, or of two equal dipole photons, 0 or 2 (never 1).
+
+    Where J allows both, as from J = 1, the scalar part is left out.
+    """
+    if table.photons == 1:
+        return MULTIPOLE_RANK[table.multipole]
+    return 2 if lower.twice_J + upper.twice_J >= 4 else 0
 
 
 def _induced(table: LineTable, upper: Level) -> str:

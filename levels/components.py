@@ -206,6 +206,10 @@ def amplitudes(line: Line, lower: Eigen, upper: Eigen) -> Array:
     return result
 
 
+def _kind(line: Line) -> str:
+    return f"an {line.multipole} line" if line.photons == 1 else f"this {line.photons}-photon line"
+
+
 def check_component(line: Line, lower: Label, upper: Label) -> None:
     """Refuse a component that the line's multipole does not drive, naming the rule and what would do."""
     q = (upper[1] - lower[1]) // 2
@@ -214,7 +218,7 @@ def check_component(line: Line, lower: Label, upper: Label) -> None:
         raise OutsideValidity(
             "upper",
             format_sublevel(*upper),
-            f"an {line.multipole} line changes m by at most {line.rank}: from m = {format_half(lower[1])} to {allowed}",
+            f"{_kind(line)} changes m by at most {line.rank}: from m = {format_half(lower[1])} to {allowed}",
         )
 
 
@@ -255,7 +259,7 @@ def component(line: Line, lower: Label, upper: Label, field_gauss: float) -> Com
 def components(line: Line, field_gauss: ArrayLike, q: int | None = None) -> Components:
     """Solve every component of a line (or those of one q) at one or many fields."""
     if q is not None and abs(q) > line.rank:
-        allowed = f"m' - m of an {line.multipole} line, from -{line.rank} to {line.rank}"
+        allowed = f"m' - m of {_kind(line)}, from -{line.rank} to {line.rank}"
         raise OutsideValidity("polarisation", q, allowed)
     fields, pairs = as_fields(field_gauss), pairs_of(line, q)
     if not pairs:

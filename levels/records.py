@@ -64,11 +64,12 @@ class Level:
 class Line:
     """One line of one isotope between the centroids of two levels.
 
-    `rank` is the multipole rank (1 for E1 and M1, 2 for E2, 3 for E3). `centroid` is the frequency in MHz between the
-    hyperfine centroids, `wavelength` the vacuum wavelength in nm that belongs to it. `einstein_A` is the partial
-    rate of this line in s-1, `branching` its fraction of the upper level's decays. `measured` are the components of
-    this isotope that were measured themselves, as (2F, 2F', frequency in MHz). `centroid_isotope` says whose frequency
-    the centroid's is: the isotope itself, or "natural" when only the element's average is known.
+    `rank` is the multipole rank (1 for E1 and M1, 2 for E2, 3 for E3; 0 or 2 for two equal photons). `centroid` is the
+    frequency in MHz between the hyperfine centroids (of two photons the sum), `wavelength` the vacuum wavelength in nm
+    of each photon. `einstein_A` is the partial rate of this line in s-1, `branching` its fraction of the upper level's
+    decays. `measured` are the components of this isotope that were measured themselves, as (2F, 2F', frequency in MHz).
+    `centroid_isotope` says whose frequency the centroid's is: the isotope itself, or "natural" when only the element's
+    average is known.
     """
 
     atom: str
