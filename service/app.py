@@ -4,7 +4,7 @@ import gc
 import logging
 from collections.abc import AsyncIterator
 from contextlib import asynccontextmanager
-from typing import Any
+from functools import cache, partial
 
 from fastapi import FastAPI
 from starlette.exceptions import HTTPException
@@ -80,10 +80,10 @@ def build_app(settings: Settings | None = None) -> Application:
     questions = [QuestionRoute(question) for question in QUESTIONS]
     api.router.routes.extend(questions)
     api.router.routes.extend(PLAIN_ROUTES)
-    document: dict[str, Any] = build_openapi(api, QUESTIONS)
+    document = cache(partial(build_openapi, api, QUESTIONS))
     api.router.routes.extend(docs_routes(document, QUESTIONS))
     api.router.routes.extend(bench_routes())
-    api.openapi = lambda: document  # type: ignore[method-assign]
+    api.openapi = document  # type: ignore[method-assign]
     front = Front(Questions(api, api, questions), settings, metrics)
     layers = CORSMiddleware(
         front,

@@ -17,7 +17,7 @@ KINDS = {
 
 def bench_routes() -> list[Route]:
     """The page at the root, and every style, script and drawing below /page."""
-    pages = [Route("/", ready((FILES / "index.html").read_text(), HTML), name="bench")]
+    pages = [Route("/", ready((FILES / "index.html").read_text, HTML), name="bench")]
     return [*pages, *(_file_route(path) for path in served_files())]
 
 
@@ -29,4 +29,4 @@ def served_files() -> Iterable[Path]:
 
 def _file_route(path: Path) -> Route:
     address = f"/page/{path.relative_to(FILES).as_posix()}"
-    return Route(address, ready(path.read_text(), KINDS[path.suffix]), name=address)
+    return Route(address, ready(path.read_text, KINDS[path.suffix]), name=address)

@@ -1,10 +1,11 @@
 """The documentation as pages of the server itself: every question with a form that asks it, every problem type.
 
-Written from the OpenAPI document and the table of problems when the application is built; nothing comes from elsewhere,
-so it works offline, and there is no inline script or style.
+Written from the OpenAPI document and the table of problems when first asked for; nothing comes from elsewhere, so it
+works offline, and there is no inline script or style.
 """
 
 from collections.abc import Awaitable, Callable, Iterable, Mapping
+from functools import cache, partial
 from html import escape
 from pathlib import Path
 from typing import Any
@@ -24,9 +25,9 @@ HTML = "text/html; charset=utf-8"
 PAGE_HEADERS = {"Content-Security-Policy": PAGE_POLICY.decode(), "Cache-Control": "public, max-age=300"}
 
 
-def docs_routes(document: Mapping[str, Any], questions: Iterable[Question]) -> list[Route]:
-    """The routes of the documentation: ready bytes each."""
-    problems = {row.name: ready(problem_page(row), HTML) for row in TYPES.values()}
+def docs_routes(document: Callable[[], Mapping[str, Any]], questions: Iterable[Question]) -> list[Route]:
+    """The routes of the documentation: each page is written once, when it is first asked for."""
+    problems = {row.name: ready(partial(problem_page, row), HTML) for row in TYPES.values()}
 
     async def problem(request: Request) -> Response:
         name = request.path_params["name"]
@@ -36,23 +37,28 @@ def docs_routes(document: Mapping[str, Any], questions: Iterable[Question]) -> l
         return await problems[name](request)
 
     pages = {
-        "/docs": (docs_page(document, list(questions)), HTML),
-        "/problems": (problems_page(), HTML),
-        "/openapi.json": (orjson.dumps(document).decode(), "application/json"),
-        "/docs/docs.css": ((FILES / "docs.css").read_text(), "text/css; charset=utf-8"),
-        "/docs/docs.js": ((FILES / "docs.js").read_text(), "text/javascript; charset=utf-8"),
+        "/docs": (lambda: docs_page(document(), list(questions)), HTML),
+        "/problems": (problems_page, HTML),
+        "/openapi.json": (lambda: orjson.dumps(document()).decode(), "application/json"),
+        "/docs/docs.css": ((FILES / "docs.css").read_text, "text/css; charset=utf-8"),
+        "/docs/docs.js": ((FILES / "docs.js").read_text, "text/javascript; charset=utf-8"),
     }
-    routes = [Route(path, ready(text, kind), name=path) for path, (text, kind) in pages.items()]
+    routes = [Route(path, ready(write, kind), name=path) for path, (write, kind) in pages.items()]
     return [*routes, Route("/problems/{name}", problem, name="problem")]
 
 
-def ready(text: str, media_type: str) -> Callable[[Request], Awaitable[Response]]:
-    body = text.encode()
-    tag = etag(body).decode()
-    headers = {**PAGE_HEADERS, "ETag": tag, "Content-Type": media_type}
+def ready(write: Callable[[], str], media_type: str) -> Callable[[Request], Awaitable[Response]]:
+    """An endpoint that answers with one text, written when it is first asked for."""
+
+    @cache
+    def written() -> tuple[bytes, bytes]:
+        body = write().encode()
+        return body, etag(body)
 
     async def endpoint(request: Request) -> Response:
-        if etag_matches(request.headers.get("if-none-match", "").encode(), tag.encode()):
+        body, tag = written()
+        headers = {**PAGE_HEADERS, "ETag": tag.decode(), "Content-Type": media_type}
+        if etag_matches(request.headers.get("if-none-match", "").encode(), tag):
             return Response(status_code=304, headers=headers)
         return Response(body, headers=headers)
 
