@@ -68,10 +68,10 @@ def interval(atom: Atom, level: Level, other: Level) -> Quantity:
         return ZERO_GAP
     pairs = [
         _between(one, two, up)
-        for one in atom.lines
-        for two in atom.lines
         for up in (True, False)
-        if _sharp(one, level, up) and _sharp(two, other, up) and _share(one, two, up)
+        for one in (line for line in atom.lines if _sharp(line, level, up))
+        for two in (line for line in atom.lines if _sharp(line, other, up))
+        if _share(one, two, up)
     ]
     known = [(pair.uncertainty, pair) for pair in pairs if pair.uncertainty is not None]
     if known:

@@ -7,14 +7,17 @@ from pydantic import Field
 
 from levels.components import Components, components, frequency_uncertainties_mhz
 from levels.notation import format_polarisation
-from levels.sensitivity import ENERGY, SHIFT
+from levels.records import Line
+from levels.sensitivity import ENERGY, SHIFT, Spread
+from levels.strongfield_lines import term_component_spread, term_components
 from levels.uncertainty import component_spread
 from service.answers import Answer, uncertainty_columns
 from service.context import Context
 from service.formats import Column, Table
+from service.models import ANSWERED, MODEL, LineModel, ModelName, model_of_line
 from service.parameters import FieldGauss, Name, PolarisationName
 from service.question import Computed, Question
-from service.routes.shift import NO_CENTROID, NO_STRENGTH, no_frequency_spread
+from service.routes.shift import NO_CENTROID, no_frequency_spread, no_strength
 from service.routes.sublevels import ORDER
 from service.schemas import Labels, MaybeNumbers, Numbers, Shape, Tabular, Texts
 
@@ -34,6 +37,7 @@ class ComponentsAsked(Computed):
     polarisation: PolarisationName | None = Field(
         None, description="only components of this polarisation: sigma+, pi or sigma-", examples=["sigma+"]
     )
+    model: ModelName = MODEL
 
 
 class ComponentColumns(Shape):
@@ -65,6 +69,7 @@ class ComponentsAnswered(Tabular):
     line: str
     lower_level: str
     upper_level: str
+    model: str = ANSWERED
     columns: ComponentColumns
 
 
@@ -90,20 +95,28 @@ def label_columns(found: Components) -> dict[str, Column]:
     }
 
 
+def solved(line: Line, model: LineModel, field: float, q: int | None) -> tuple[Components, Spread]:
+    """Every component with its uncertainty, in the model that answers."""
+    if model.ends is None:
+        return components(line, field, q), component_spread(line, field, q)
+    return term_components(model.ends, field, q), term_component_spread(model.ends, field, q)
+
+
 def answer_components(context: Context, path: Mapping[str, str], asked: ComponentsAsked) -> Answer:
     """Every component that the line's multipole allows: where it lies, how it moves, how strong it is.
 
     Strengths are normalised so that all decays of one upper sublevel to the lower level sum to 1. Components that are
-    closed at zero field and that the field opens are listed too.
+    closed at zero field and that the field opens are listed too. Where the field mixes the fine structure by more than
+    1 % the whole LS terms answer; their strengths take the ratios of LS coupling.
     """
-    line, grounds = context.line(path["atom"], asked.line), context.line_grounds(path["atom"], asked.line)
-    found = components(line, asked.field, asked.polarisation)
-    spread = component_spread(line, asked.field, asked.polarisation)
+    line = context.line(path["atom"], asked.line)
+    model = model_of_line(context, path["atom"], asked.line, asked.field, asked.model)
+    found, spread = solved(line, model, asked.field, asked.polarisation)
     sigma, doubted = uncertainty_columns(dict(zip(UNCERTAINTIES, spread.uncertainty[ORDER, 0], strict=True)))
     frequencies, missing = frequency_columns(found, spread.uncertainty[:, 0])
     missing = {**doubted, **missing}
     if not found.strength_known:
-        missing["strength"] = NO_STRENGTH
+        missing["strength"] = no_strength(line)
     columns: dict[str, Column] = {
         **label_columns(found),
         "offset_MHz": found.offset_mhz[0],
@@ -119,10 +132,16 @@ def answer_components(context: Context, path: Mapping[str, str], asked: Componen
         "strength_at_zero_field": [str(part) if found.strength_known else "" for part in found.zero_field_strength],
     }
     return Answer(
-        {"atom": line.atom, "line": line.name, "lower_level": line.lower.name, "upper_level": line.upper.name},
+        {
+            "atom": line.atom,
+            "line": line.name,
+            "lower_level": line.lower.name,
+            "upper_level": line.upper.name,
+            "model": model.name,
+        },
         Table(columns, missing),
-        used=grounds.basis,
-        warnings=grounds.warnings(asked.field),
+        used=model.used,
+        warnings=model.warnings,
         uncertainty_excludes=spread.excludes,
     )
 

@@ -5,18 +5,21 @@ from functools import lru_cache
 
 from pydantic import Field
 
-from levels.components import Component
+from levels.components import Component, strength_model
 from levels.notation import format_polarisation
 from levels.records import Line
 from levels.sensitivity import ENERGY, QUADRATIC, SHIFT, SLOPE
+from levels.strongfield_lines import term_component
 from service.answers import DOUBTED, Answer, scalar, uncertain
 from service.context import Context
+from service.models import ANSWERED, MODEL, ModelName, model_of_line
 from service.parameters import FieldGauss, Name, Sublevel
 from service.question import Computed, Question
 from service.schemas import Answered, Half, Scalar
 
 NO_CENTROID = "the frequency of this line's centroid is not in the catalogue"
 NO_STRENGTH = "the line is opened by the field alone: its strength is not in this model"
+NO_RATIO = "the field mixes levels of different J and no coupling scheme gives the ratio of their strengths here"
 NO_UNCERTAINTY = "the uncertainty of this line's centroid is not stated"
 
 
@@ -30,6 +33,7 @@ class ShiftAsked(Computed):
     lower: Sublevel = Field(description="F,m of the lower sublevel", examples=["2,2"])
     upper: Sublevel = Field(description="F,m of the upper sublevel", examples=["3,3"])
     field: FieldGauss = Field(description="magnetic field along z, in gauss or with a unit", examples=["3.2"])
+    model: ModelName = MODEL
 
 
 class ShiftAnswered(Answered):
@@ -44,6 +48,7 @@ class ShiftAnswered(Answered):
     upper_F: Half
     upper_m: Half
     polarisation: str = Field(description="sigma+, pi or sigma- for m' - m = 1, 0, -1; q=+2 and the like beyond")
+    model: str = ANSWERED
     frequency: Scalar = Field(description="frequency to set a laser to")
     offset: Scalar = Field(description="frequency less that of the line's centroid")
     shift: Scalar = Field(description="offset less that of the same component at zero field")
@@ -58,14 +63,19 @@ class ShiftAnswered(Answered):
 def shift(context: Context, path: Mapping[str, str], asked: ShiftAsked) -> Answer:
     """The frequency of one component, its offset from the line's centroid, and how both move with the field.
 
-    Neglected: mixing of the fine-structure levels beyond second order, and the diamagnetic shift.
+    Fine-structure mixing is kept to second order, and to all orders in the whole LS term where it is more than 1 %.
+    Neglected: the diamagnetic shift.
     """
-    grounds = context.line_grounds(path["atom"], asked.line)
-    found = context.component(path["atom"], asked.line, asked.lower, asked.upper).at(asked.field)
+    atom, name = path["atom"], asked.line
+    model = model_of_line(context, atom, name, asked.field, asked.model)
+    if model.ends is None:
+        found = context.component(atom, name, asked.lower, asked.upper).at(asked.field)
+    else:
+        found = term_component(model.ends, asked.lower, asked.upper, asked.field)
     return Answer(
-        {**labels(found.line, found), **numbers(found)},
-        used=grounds.basis,
-        warnings=grounds.warnings(asked.field),
+        {**labels(found.line, found), "model": model.name, **numbers(found)},
+        used=model.used,
+        warnings=model.warnings,
         uncertainty_excludes=found.spread.excludes,
     )
 
@@ -96,7 +106,10 @@ def numbers(found: Component) -> dict[str, object]:
         "slope": uncertain(found.slope_mhz_per_gauss, spread[SLOPE], stated[SLOPE], "MHz/G"),
         "quadratic": uncertain(found.quadratic_hz_per_gauss2, spread[QUADRATIC], stated[QUADRATIC], "Hz/G2"),
         "strength": scalar(
-            found.strength if known else None, None, "1", "uncertainty not computed" if known else NO_STRENGTH
+            found.strength if known else None,
+            None,
+            "1",
+            "uncertainty not computed" if known else no_strength(found.line),
         ),
         "strength_at_zero_field": str(found.zero_field_strength) if known else "",
     }
@@ -109,6 +122,11 @@ def _frequency(found: Component) -> dict[str, object]:
     if spread is None:
         return scalar(frequency * 1e-6, None, "THz", no_frequency_spread(found.line))
     return scalar(frequency * 1e-6, spread * 1e-6, "THz")
+
+
+def no_strength(line: Line) -> str:
+    """Why a strength is not known."""
+    return NO_RATIO if strength_model(line) else NO_STRENGTH
 
 
 def no_frequency_spread(line: Line) -> str:

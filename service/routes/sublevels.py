@@ -6,11 +6,14 @@ import numpy as np
 from pydantic import Field
 
 from levels.sensitivity import ENERGY, QUADRATIC, SHIFT, SLOPE
+from levels.strongfield import term_sublevels
+from levels.strongfield_spread import term_spread
 from levels.sublevels import Sublevels, sublevels
 from levels.uncertainty import sublevel_spread
 from service.answers import Answer, uncertainty_columns
 from service.context import Context
 from service.formats import Column, Table
+from service.models import ANSWERED, MODEL, ModelName, model_of_level
 from service.parameters import FieldGauss, Name
 from service.question import Computed, Question
 from service.schemas import Labels, MaybeNumbers, Numbers, Shape, Tabular
@@ -29,6 +32,7 @@ class SublevelsAsked(Computed):
 
     level: Name = Field(description="level, as `5s_2S1/2` (`5S1/2` where that is unambiguous)", examples=["5s_2S1/2"])
     field: FieldGauss = Field(0.0, description="magnetic field along z, in gauss or with a unit", examples=["3.2"])
+    model: ModelName = MODEL
 
 
 class SublevelColumns(Shape):
@@ -54,6 +58,7 @@ class SublevelsAnswered(Tabular):
 
     atom: str
     level: str
+    model: str = ANSWERED
     columns: SublevelColumns
 
 
@@ -66,11 +71,16 @@ def label_columns(found: Sublevels) -> dict[str, Column]:
 def answer_sublevels(context: Context, path: Mapping[str, str], asked: SublevelsAsked) -> Answer:
     """Energy, shift, slope, quadratic coefficient and moment of every sublevel of a level at one field.
 
-    Energies count from the level's hyperfine centroid. Uncertainties come from those of A, B, C, g_J and g_I; inputs
-    without one are listed in `uncertainty_excludes`.
+    Energies count from the level's hyperfine centroid. Uncertainties come from those of A, B, C, g_J and g_I, and of
+    the fine-structure intervals in a whole term; inputs without one are listed in `uncertainty_excludes`. m_J and m_I
+    are the labels of the level by itself, in fields that undo its hyperfine structure and not yet its fine structure.
     """
-    level, grounds = context.level(path["atom"], asked.level), context.level_grounds(path["atom"], asked.level)
-    found, spread = sublevels(level, asked.field), sublevel_spread(level, asked.field)
+    level = context.level(path["atom"], asked.level)
+    model = model_of_level(context, path["atom"], asked.level, asked.field, asked.model)
+    if model.term is None:
+        found, spread = sublevels(level, asked.field), sublevel_spread(level, asked.field)
+    else:
+        found, spread = term_sublevels(model.term, asked.field), term_spread(model.term, asked.field)
     sigma, doubted = uncertainty_columns(dict(zip(UNCERTAINTIES, spread.uncertainty[ORDER, 0], strict=True)))
     columns: dict[str, Column] = {
         **label_columns(found),
@@ -85,10 +95,10 @@ def answer_sublevels(context: Context, path: Mapping[str, str], asked: Sublevels
         "moment_muB": np.asarray(found.moment_mu_b[0]),
     }
     return Answer(
-        {"atom": level.atom, "level": level.name},
+        {"atom": level.atom, "level": level.name, "model": model.name},
         Table(columns, doubted),
-        used=grounds.basis,
-        warnings=grounds.warnings(asked.field),
+        used=model.used,
+        warnings=model.warnings,
         uncertainty_excludes=spread.excludes,
     )
 

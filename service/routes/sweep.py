@@ -2,6 +2,7 @@
 
 import time
 from collections.abc import Iterator, Mapping, Sequence
+from functools import partial
 from typing import Any, Literal
 
 import numpy as np
@@ -12,14 +13,17 @@ from levels.components import components, pairs_of, strength_model
 from levels.errors import OutsideValidity, UnknownName
 from levels.notation import format_polarisation, format_sublevel
 from levels.records import Line
+from levels.strongfield import term_sublevels
+from levels.strongfield_lines import pair_ratios, term_components
 from levels.sublevels import constants_of, labels_of, sublevels
 from service.answers import Answer
 from service.context import Context
 from service.formats import Column, Table
+from service.models import ANSWERED, MODEL, ModelName, model_of_level, model_of_line
 from service.parameters import FieldGauss, Name, PolarisationName, Sublevel
 from service.problems import Problem
 from service.question import Computed, Question, Strict
-from service.routes.shift import NO_CENTROID, NO_STRENGTH
+from service.routes.shift import NO_CENTROID, no_strength
 from service.schemas import Answered, Missing
 
 Array = NDArray[np.float64]
@@ -89,6 +93,7 @@ class SweepAsked(Computed):
     lower: Sublevel | None = Field(None, description="of a line: only components from this sublevel")
     upper: Sublevel | None = Field(None, description="of a line: only components to this sublevel")
     polarisation: PolarisationName | None = Field(None, description="of a line: only components of this polarisation")
+    model: ModelName = MODEL
 
 
 class SweepAnswered(Answered):
@@ -97,6 +102,7 @@ class SweepAnswered(Answered):
     atom: str
     level: str = Field(description="the level; of a line its upper level")
     line: str = Field(description="the line; empty for a level")
+    model: str = ANSWERED
     columns: dict[str, list[float | str | None]] = Field(
         description="field_G; labels (F, m or lower_F, lower_m, upper_F, upper_m, polarisation); the numbers asked for"
     )
@@ -106,7 +112,8 @@ class SweepAnswered(Answered):
 def sweep(context: Context, path: Mapping[str, str], asked: SweepAsked) -> Answer:
     """Sublevels of a level, or components of a line, over a grid of fields: one row for each field and state.
 
-    An answer holds at most a million numbers; above some hundred thousand it is streamed.
+    An answer holds at most a million numbers; above some hundred thousand it is streamed. One model answers for the
+    whole grid: that of its largest field.
     """
     if (asked.level is None) == (asked.line is None):
         raise OutsideValidity("level", asked.level or "", "either level or line, not both")
@@ -117,7 +124,8 @@ def sweep(context: Context, path: Mapping[str, str], asked: SweepAsked) -> Answe
 
 
 def _of_level(context: Context, asked: SweepAsked, name: str, fields: Array) -> Answer:
-    level, grounds = context.level(asked.atom, name), context.level_grounds(asked.atom, name)
+    level = context.level(asked.atom, name)
+    model = model_of_level(context, asked.atom, name, float(np.abs(fields).max()), asked.model)
     _refuse(asked, ("lower", "upper", "polarisation"), "of a line, not of a level")
     names = _names(asked, OF_LEVEL, ("energy_MHz", "slope_MHz_per_G"))
     labels = labels_of(constants_of(level))
@@ -129,7 +137,8 @@ def _of_level(context: Context, asked: SweepAsked, name: str, fields: Array) -> 
     _check_size(context, fields.size * len(at) * (3 + len(names)))
     quadratic = "quadratic_Hz_per_G2" in names
     pieces = _pieces(fields, len(labels) * (4 if quadratic else 3), context.settings.max_seconds)
-    solved = [_taken(sublevels(level, piece, quadratic=quadratic), OF_LEVEL, names, at) for piece in pieces]
+    solve = partial(sublevels, level) if model.term is None else partial(term_sublevels, model.term)
+    solved = [_taken(solve(piece, quadratic=quadratic), OF_LEVEL, names, at) for piece in pieces]
     columns: dict[str, Column] = {
         "field_G": np.repeat(fields, len(at)),
         "F": np.tile([label[0] / 2 for label in chosen], fields.size),
@@ -137,15 +146,16 @@ def _of_level(context: Context, asked: SweepAsked, name: str, fields: Array) -> 
         **_joined(solved, names),
     }
     return Answer(
-        {"atom": level.atom, "level": level.name, "line": ""},
+        {"atom": level.atom, "level": level.name, "line": "", "model": model.name},
         Table(columns),
-        used=grounds.basis,
-        warnings=grounds.warnings(float(np.abs(fields).max())),
+        used=model.used,
+        warnings=model.warnings,
     )
 
 
 def _of_line(context: Context, asked: SweepAsked, name: str, fields: Array) -> Answer:
-    line, grounds = context.line(asked.atom, name), context.line_grounds(asked.atom, name)
+    line = context.line(asked.atom, name)
+    model = model_of_line(context, asked.atom, name, float(np.abs(fields).max()), asked.model)
     _refuse(asked, ("sublevels",), "of a level, not of a line")
     names = _names(asked, OF_LINE, ("offset_MHz", "slope_MHz_per_G", "strength"))
     pairs = pairs_of(line, asked.polarisation)
@@ -158,7 +168,8 @@ def _of_line(context: Context, asked: SweepAsked, name: str, fields: Array) -> A
     pieces = _pieces(fields, 5 * len(pairs), context.settings.max_seconds)
     # Without a published frequency the column is emptied below; the offsets only hold its place.
     taken = OF_LINE if line.centroid is not None else {**OF_LINE, "frequency_THz": "offset_mhz"}
-    solved = [_taken(components(line, piece, asked.polarisation), taken, names, at) for piece in pieces]
+    solve = partial(components, line) if model.ends is None else partial(term_components, model.ends)
+    solved = [_taken(solve(piece, asked.polarisation), taken, names, at) for piece in pieces]
     labels = [pairs[place] for place in at]
     columns: dict[str, Column] = {
         "field_G": np.repeat(fields, len(at)),
@@ -169,16 +180,17 @@ def _of_line(context: Context, asked: SweepAsked, name: str, fields: Array) -> A
         "polarisation": [format_polarisation((up[1] - low[1]) // 2) for low, up in labels] * fields.size,
         **_joined(solved, names),
     }
-    missing = _complete(line, columns)
+    known = model.ends is None or bool(pair_ratios(model.ends))
+    missing = _complete(line, columns, known)
     return Answer(
-        {"atom": line.atom, "level": line.upper.name, "line": line.name},
+        {"atom": line.atom, "level": line.upper.name, "line": line.name, "model": model.name},
         Table(columns, missing),
-        used=grounds.basis,
-        warnings=grounds.warnings(float(np.abs(fields).max())),
+        used=model.used,
+        warnings=model.warnings,
     )
 
 
-def _complete(line: Line, columns: dict[str, Column]) -> dict[str, str]:
+def _complete(line: Line, columns: dict[str, Column], strength_known: bool) -> dict[str, str]:
     """Write frequencies in THz; empty what the catalogue or the model does not have, and say why."""
     missing: dict[str, str] = {}
     if "frequency_THz" in columns:
@@ -186,8 +198,8 @@ def _complete(line: Line, columns: dict[str, Column]) -> dict[str, str]:
             missing["frequency_THz"] = NO_CENTROID
         else:
             columns["frequency_THz"] = np.asarray(columns["frequency_THz"]) * 1e-6
-    if "strength" in columns and not strength_model(line):
-        missing["strength"] = NO_STRENGTH
+    if "strength" in columns and not (strength_known and strength_model(line)):
+        missing["strength"] = no_strength(line)
     for name in missing:
         columns[name] = [None] * len(columns["field_G"])
     return missing
