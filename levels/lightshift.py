@@ -99,7 +99,7 @@ def shift_of(polarisability_a03: float, intensity_mw_per_cm2: float = 1.0) -> fl
     """Compute the shift -alpha E0^2/4h in MHz of a polarisability in a0^3.
 
     >>> round(shift_of(1.0) * 1e9, 6)  # mHz in 1 mW/cm2
-    -0.046876
+    -0.046871
     """
     if not 0 <= intensity_mw_per_cm2 <= LARGEST_INTENSITY:
         raise OutsideValidity("intensity", intensity_mw_per_cm2, f"from 0 to {LARGEST_INTENSITY:g} mW/cm2")

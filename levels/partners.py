@@ -8,9 +8,9 @@ parts, nu' being the lowest frequency at which something left out can resonate (
 highest of the book, which is taken to have every strong line below): the value is not corrected for that, its
 uncertainty holds all of it.
 
-Strengths of lines are taken as independent of each other. Where an input has no stated uncertainty and a change by
-`UNSTATED_SHARE` of its contribution would outweigh the rest, or where the remainder is not known, there is no
-uncertainty (NaN), and `Doubt` says why.
+Strengths and frequencies of lines are taken as independent of each other. Where an input has no stated uncertainty and
+a change by `UNSTATED_SHARE` of its contribution would outweigh the rest, or where the remainder is not known, there is
+no uncertainty (NaN), and `Doubt` says why.
 """
 
 from collections.abc import Hashable, Iterable, Mapping
@@ -21,11 +21,12 @@ from numpy.typing import NDArray
 
 from levels.constants import HARTREE_MHZ, MHZ_NM
 from levels.errors import NotPublished
-from levels.quantity import Quantity
+from levels.quantity import Quantity, parse_number, resolution
 from levels.records import Atom, Level, Line
 
 Array = NDArray[np.float64]
 UNSTATED_SHARE = 0.01
+NOTABLE = 0.01  # of the stated uncertainty: doubts below this are not named
 
 
 @dataclass(frozen=True, slots=True)
@@ -86,6 +87,16 @@ def strength_uncertainty(line: Line) -> float | None:
     """Return the relative standard uncertainty of a line's strength (the dipole element squared), None if unstated."""
     dipole = line.reduced_dipole
     return None if dipole is None or dipole.uncertainty is None else 2 * dipole.uncertainty / abs(dipole.value)
+
+
+def frequency_uncertainty_mhz(line: Line) -> tuple[float | None, float]:
+    """Return a line's stated frequency uncertainty in MHz, None if unstated, and what one unit of its last digit is."""
+    centroid = line.centroid
+    if centroid is None:
+        raise NotPublished("frequency", f"{line.atom} {line.name}")
+    digits = centroid.text.partition(" ")[0]
+    value = parse_number(digits)[0]
+    return centroid.uncertainty, abs(resolution(digits) / value * centroid.value) if value else 0.0
 
 
 def static_scalar(level: Level, line: Line) -> float:
@@ -149,33 +160,44 @@ class Doubt:
     reasons: tuple[str, ...] = ()
 
 
-def strength_terms(partners: Partners, shares: Mapping[str, Array], anchor: float = 0.0, sign: float = 1.0) -> Terms:
-    """Say how numbers move with the strength of each line, per relative change: by the line's share in them.
+def line_terms(
+    partners: Partners,
+    shares: Mapping[str, Array],
+    slopes: Mapping[str, Array],
+    anchor: float = 0.0,
+    sign: float = 1.0,
+) -> Terms:
+    """Say how numbers move with each line's strength, per relative change (its share), and with its frequency.
 
     `anchor` is how much of the static scalar is in the numbers (1 for a scalar polarisability): an anchored remainder
-    takes the opposite change there.
+    takes the opposite change there. `slopes` are per MHz; a frequency without a stated uncertainty is doubted by a
+    unit of its last digit.
     """
     terms: Terms = {}
     for line in partners.lines:
         moved = shares[line.name]
         if partners.remainder.anchored and anchor:
             moved = moved - anchor * static_scalar(partners.level, line)
-        terms["line", line.name] = (sign * moved, strength_uncertainty(line), f"strength of {line.name}")
+        terms["strength", line.name] = (sign * moved, strength_uncertainty(line), f"strength of {line.name}")
+        stated, unit = frequency_uncertainty_mhz(line)
+        scale = sign if stated is not None else sign * unit / UNSTATED_SHARE
+        terms["frequency", line.name] = (scale * slopes[line.name], stated, f"frequency of {line.name}")
     return terms
 
 
-@dataclass(frozen=True, slots=True)
+@dataclass(frozen=True, slots=True, eq=False)
 class Weighing:
     """How much of each part of a remainder enters a number: its scalar, vector and tensor part, and its energy shift.
 
     `turned` and `tilted` bound what multiplies the scalar to give the vector and tensor part; `moved_mhz` is by how
-    much the sublevels' energies differ.
+    much the sublevels' energies differ. `caps` are other bounds of the same, per light frequency, where there are any.
     """
 
     scalar: float = 1.0
     turned: float = 0.0
     tilted: float = 0.0
     moved_mhz: float = 0.0
+    caps: tuple[Array, Array] | None = None
 
 
 SCALAR = Weighing()
@@ -187,9 +209,11 @@ def remainder_terms(partners: Partners, light_mhz: Array, weighing: Weighing = S
     bound = np.full_like(light_mhz, np.nan)
     if rest.uncertainty is not None and rest.opens_mhz > 0:
         ratio = np.where(light_mhz < rest.opens_mhz, light_mhz / rest.opens_mhz, np.nan)
-        growth = abs(weighing.scalar) * ratio**2 + weighing.turned * ratio + weighing.tilted
-        growth = growth + 2 * weighing.moved_mhz / rest.opens_mhz / (1 - ratio**2)
-        bound = abs(rest.dispersing) * growth / (1 - ratio**2)
+        turned, tilted = weighing.turned * ratio / (1 - ratio**2), weighing.tilted / (1 - ratio**2)
+        if weighing.caps is not None:
+            turned, tilted = np.fmin(turned, weighing.caps[0]), np.fmin(tilted, weighing.caps[1])
+        growth = abs(weighing.scalar) * ratio**2 + 2 * weighing.moved_mhz / rest.opens_mhz / (1 - ratio**2)
+        bound = abs(rest.dispersing) * (growth / (1 - ratio**2) + turned + tilted)
     terms: Terms = {("dispersion", name): (bound, 1.0, f"what the sum of {name} leaves out")}
     if weighing.scalar:
         spread = np.nan if rest.uncertainty is None else rest.uncertainty
@@ -208,13 +232,11 @@ def add_strengths(first: Terms, second: Terms) -> Terms:
 
 def doubt_of(terms: Terms, size: int) -> Doubt:
     """Combine the movements of n numbers into their uncertainties, and say what they leave out."""
-    variance, unstated, unknown = np.zeros(size), np.zeros(size), np.zeros(size, dtype=np.bool_)
-    excludes, reasons = [], []
+    variance, unknown = np.zeros(size), np.zeros(size, dtype=np.bool_)
+    doubts, reasons = {}, []
     for moved, spread, name in terms.values():
         if spread is None:
-            unstated = np.maximum(unstated, np.abs(moved) * UNSTATED_SHARE)
-            if np.any(moved != 0):
-                excludes.append(name)
+            doubts[name] = np.abs(moved) * UNSTATED_SHARE
             continue
         part = moved * spread
         variance += np.nan_to_num(part) ** 2
@@ -222,7 +244,8 @@ def doubt_of(terms: Terms, size: int) -> Doubt:
         if np.any(np.isnan(part)):
             reasons.append(f"{name} is not known")
     stated = np.sqrt(variance)
-    lost = unstated > stated
+    lost = np.any(np.array([part > stated for part in doubts.values()]).reshape(-1, size), axis=0)
     if np.any(lost):
-        reasons.append("strengths without a stated uncertainty could outweigh those with one")
-    return Doubt(np.where(lost | unknown, np.nan, stated), stated, tuple(excludes), tuple(reasons))
+        reasons.append("inputs without a stated uncertainty could outweigh those with one")
+    excludes = tuple(name for name, part in doubts.items() if np.any(part > NOTABLE * stated))
+    return Doubt(np.where(lost | unknown, np.nan, stated), stated, excludes, tuple(reasons))

@@ -26,7 +26,7 @@ from levels.angular import six_j
 from levels.blocks import hyperfine_shift
 from levels.constants import HARTREE_MHZ, MHZ_NM
 from levels.errors import OutsideValidity, UnknownName
-from levels.notation import format_half
+from levels.notation import format_half, term_quantum_numbers
 from levels.partners import (
     SCALAR,
     Doubt,
@@ -34,10 +34,11 @@ from levels.partners import (
     Weighing,
     dipole_of,
     doubt_of,
+    line_terms,
     other_end,
     remainder_terms,
     signed_frequency_mhz,
-    strength_terms,
+    static_scalar,
 )
 from levels.records import Level, Line
 
@@ -113,7 +114,7 @@ def clearance_mhz(line: Line) -> float:
 
 
 @dataclass(frozen=True, slots=True)
-class _Pole:
+class Pole:
     """One component F' of a line: signed frequency, weights by rank times |d|^2, clearance around it."""
 
     frequency_mhz: float
@@ -121,33 +122,36 @@ class _Pole:
     clearance_mhz: float
 
 
-def _poles(level: Level, line: Line, twice_F: int | None) -> list[_Pole]:
+def poles_of(level: Level, line: Line, twice_F: int | None) -> list[Pole]:
+    """List the components that a line has for a whole level (one) or for one F (up to three)."""
     other, centre, square = other_end(level, line), signed_frequency_mhz(level, line), dipole_of(line) ** 2
     if twice_F is None:
         spans = [max(shifts) - min(shifts) for end in (level, other) if (shifts := hyperfine_levels(end).values())]
         weights = [square * weight for weight in rank_weights(level.twice_J, other.twice_J)]
-        return [_Pole(centre, (weights[0], weights[1], weights[2]), clearance_mhz(line) + sum(spans))]
+        return [Pole(centre, (weights[0], weights[1], weights[2]), clearance_mhz(line) + sum(spans))]
     below = hyperfine_levels(level)[twice_F]
     poles = []
     for F, above in hyperfine_levels(other).items():
         if abs(F - twice_F) <= 2 <= F + twice_F:
             share = square * hyperfine_share(level.twice_J, other.twice_J, level.twice_I, twice_F, F)
             one, two, three = (share * weight for weight in rank_weights(twice_F, F))
-            poles.append(_Pole(centre + above - below, (one, two, three), clearance_mhz(line)))
+            poles.append(Pole(centre + above - below, (one, two, three), clearance_mhz(line)))
     return poles
 
 
-def _share(poles: list[_Pole], light_mhz: Array) -> tuple[Array, NDArray[np.bool_]]:
-    """Add the components of one line: (3, n) in a0^3, and where light is too close to one of them."""
-    total, close = np.zeros((3, light_mhz.size)), np.zeros(light_mhz.size, dtype=np.bool_)
+def _share(poles: list[Pole], light_mhz: Array) -> tuple[Array, NDArray[np.bool_]]:
+    """Add the components of one line: (2, 3, n), what they add in a0^3 and its slope per MHz of their frequency.
+
+    The second result marks where light is too close to a component.
+    """
+    total, close = np.zeros((2, 3, light_mhz.size)), np.zeros(light_mhz.size, dtype=np.bool_)
     for pole in poles:
         near, far = pole.frequency_mhz - light_mhz, pole.frequency_mhz + light_mhz
         close |= np.minimum(np.abs(near), np.abs(far)) < pole.clearance_mhz
         with np.errstate(divide="ignore", invalid="ignore"):
-            near, far = HARTREE_MHZ / near, HARTREE_MHZ / far
-            total[0] += pole.weights[0] * (near + far)
-            total[1] += pole.weights[1] * (near - far)
-            total[2] += pole.weights[2] * (near + far)
+            for K, weight in zip(RANKS, pole.weights, strict=True):
+                total[0, K] += weight * HARTREE_MHZ * (1 / near + (-1) ** K / far)
+                total[1, K] -= weight * HARTREE_MHZ * (1 / near**2 + (-1) ** K / far**2)
     return total, close
 
 
@@ -159,22 +163,25 @@ def polarisability(partners: Partners, wavelength_nm: ArrayLike, twice_F: int | 
         raise UnknownName("hyperfine level", f"F = {format_half(twice_F)}", hint=f"F of {level.name} is {allowed}")
     wavelengths = as_wavelengths(wavelength_nm)
     light = MHZ_NM / wavelengths
-    shares, close = np.zeros((len(partners.lines), 3, light.size)), np.zeros(light.size, dtype=np.bool_)
+    parts, close = np.zeros((len(partners.lines), 2, 3, light.size)), np.zeros(light.size, dtype=np.bool_)
     for row, line in enumerate(partners.lines):
-        shares[row], near = _share(_poles(level, line, twice_F), light)
+        parts[row], near = _share(poles_of(level, line, twice_F), light)
         close |= near
+    shares = parts[:, 0].copy()
     numbers = shares.sum(axis=0)
     numbers[0] += partners.remainder.value
-    doubts = [_doubt(partners, np.where(close, 0.0, shares[:, K]), light, K) for K in RANKS]
+    parts[..., close] = 0.0
+    doubts = [_doubt(partners, parts[:, :, K], light, K) for K in RANKS]
     numbers[:, close], shares[:, :, close] = np.nan, np.nan
     return Polarisability(partners, twice_F, wavelengths, numbers, shares, (doubts[0], doubts[1], doubts[2]), close)
 
 
-def _doubt(partners: Partners, shares: Array, light: Array, K: int) -> Doubt:
-    by_line = {line.name: shares[row] for row, line in enumerate(partners.lines)}
+def _doubt(partners: Partners, parts: Array, light: Array, K: int) -> Doubt:
+    shares, slopes = ({line.name: parts[row, kind] for row, line in enumerate(partners.lines)} for kind in (0, 1))
     turned, tilted = vector_and_tensor_bounds(partners.level.twice_J)
-    weighing = (SCALAR, Weighing(0.0, turned=turned), Weighing(0.0, tilted=tilted))[K]
-    terms = strength_terms(partners, by_line, anchor=1.0 if K == 0 else 0.0)
+    caps = vector_and_tensor_caps(partners, light)
+    weighing = (SCALAR, Weighing(0.0, turned=turned, caps=caps), Weighing(0.0, tilted=tilted, caps=caps))[K]
+    terms = line_terms(partners, shares, slopes, anchor=1.0 if K == 0 else 0.0)
     return doubt_of(terms | remainder_terms(partners, light, weighing), light.size)
 
 
@@ -184,3 +191,17 @@ def vector_and_tensor_bounds(twice_J: int) -> tuple[float, float]:
     others = [J for J in (twice_J - 2, twice_J, twice_J + 2) if J >= 0 and (J or twice_J)]
     weights = [rank_weights(twice_J, J) for J in others]
     return max(abs(w[1] / w[0]) for w in weights), max(abs(w[2] / w[0]) for w in weights)
+
+
+def vector_and_tensor_caps(partners: Partners, light_mhz: Array) -> tuple[Array, Array] | None:
+    """Bound the vector and tensor parts of the remainder of an S level by those of its lines, over their static scalar.
+
+    Both come from fine structure alone there, which falls towards higher levels, as their distance grows.
+    """
+    level = partners.level
+    if level.coupling != "LS" or not level.term or term_quantum_numbers(level.term)["L"] or not partners.lines:
+        return None
+    parts = sum(_share(poles_of(level, line, None), light_mhz)[0][0] for line in partners.lines)
+    static = sum(abs(static_scalar(level, line)) for line in partners.lines)
+    numbers = np.abs(np.asarray(parts)) / static
+    return numbers[1], numbers[2]

@@ -27,12 +27,18 @@ from levels.partners import (
     add_strengths,
     dipole_of,
     doubt_of,
+    line_terms,
     other_end,
     remainder_terms,
     signed_frequency_mhz,
-    strength_terms,
 )
-from levels.polarisability import clearance_mhz, vector_and_tensor_bounds
+from levels.polarisability import (
+    clearance_mhz,
+    hyperfine_levels,
+    poles_of,
+    vector_and_tensor_bounds,
+    vector_and_tensor_caps,
+)
 from levels.rational import Rational
 from levels.records import Line
 from levels.sublevels import Constants, Eigen, as_fields, constants_of, find_sublevel, solve_block
@@ -42,7 +48,7 @@ Array = NDArray[np.float64]
 
 @dataclass(frozen=True, slots=True, eq=False)
 class Response:
-    """Poles and weights of one sublevel (2F, 2m) at n fields.
+    """Poles and weights of one sublevel (2F, 2m) at n fields; without a label, of a level's or an F's scalar part.
 
     `pole_mhz` and `weight` (a0^3 MHz) have shape (n, k): alpha_q = remainder + sum over the poles with that `q` of
     weight/(pole - nu). Counter-rotating terms are poles of negative frequency (of positive, for lines downwards).
@@ -52,7 +58,7 @@ class Response:
     """
 
     partners: Partners
-    label: Label
+    label: Label | None
     field_gauss: Array
     q: NDArray[np.int64]
     pole_mhz: Array
@@ -95,11 +101,20 @@ class Response:
         )
 
     def terms(self, light_mhz: Array, fractions: Array, at: int = 0, sign: float = 1.0) -> Terms:
-        """Say how the polarisability at m light frequencies moves with the strengths, for |c_q|^2 of (3,) or (3, m)."""
+        """Say how the polarisability at m light frequencies moves with the lines, for |c_q|^2 of (3,) or (3, m)."""
         share = np.reshape(fractions, (3, -1))
-        shares = (self.shares(light_mhz, at) * share).sum(axis=1)
-        by_line = {line.name: shares[row] for row, line in enumerate(self.partners.lines)}
-        return strength_terms(self.partners, by_line, anchor=1.0, sign=sign)
+        gap = self.pole_mhz[at][:, None] - light_mhz
+        slopes = np.zeros((len(self.partners.lines), 3, light_mhz.size))
+        np.add.at(slopes, (self.line, self.q + 1), -np.abs(self.weight[at])[:, None] / gap**2)
+        parts = (self.shares(light_mhz, at), slopes)
+        lines, level = self.partners.lines, self.partners.level
+        shares, moved = (
+            {line.name: row for line, row in zip(lines, (part * share).sum(axis=1), strict=True)} for part in parts
+        )
+        for line in lines:
+            if line.lower.name != level.name:
+                moved[line.name] = -moved[line.name]
+        return line_terms(self.partners, shares, moved, anchor=1.0, sign=sign)
 
 
 def response(partners: Partners, label: Label, field_gauss: ArrayLike) -> Response:
@@ -136,6 +151,34 @@ def response(partners: Partners, label: Label, field_gauss: ArrayLike) -> Respon
     )
 
 
+def scalar_response(partners: Partners, twice_F: int | None = None) -> Response:
+    """Return the scalar polarisability of a level, or of one F, in the shape of a sublevel's answer to light."""
+    q, poles, weights, rows, clear = [], [], [], [], []
+    for row, line in enumerate(partners.lines):
+        for pole in poles_of(partners.level, line, twice_F):
+            for sign, owner in ((sign, owner) for sign in (1, -1) for owner in QS):
+                q.append(owner)
+                poles.append(sign * pole.frequency_mhz)
+                weights.append(sign * pole.weights[0] * HARTREE_MHZ)
+                rows.append(row)
+                clear.append(pole.clearance_mhz)
+    nothing = np.zeros(1)
+    energy = nothing if twice_F is None else np.array([hyperfine_levels(partners.level)[twice_F]])
+    return Response(
+        partners,
+        None,
+        nothing,
+        np.array(q, dtype=np.int64),
+        np.array([poles]),
+        np.array([weights]),
+        np.array(rows, dtype=np.int64),
+        np.array(clear),
+        energy,
+        nothing,
+        nothing,
+    )
+
+
 def _mixture(own: Eigen, rank: int, twice_J: int) -> tuple[Array, Array, Array]:
     """Return energy, orientation and alignment of one rank of a block at n fields."""
     J, J_z, share = twice_J / 2, own.block.J_z, own.states[:, :, rank] ** 2
@@ -165,7 +208,7 @@ def _driven(
     return found
 
 
-def _weighing(one: Response, fractions: Array, at: int, minus: Response | None = None) -> Weighing:
+def _weighing(one: Response, light_mhz: Array, fractions: Array, at: int, minus: Response | None = None) -> Weighing:
     """Say how a remainder enters the polarisability of a sublevel, or the difference of two of one level."""
     share = np.reshape(fractions, (3, -1))
     circular = float(np.max(np.abs(share[2] - share[0])))
@@ -175,17 +218,20 @@ def _weighing(one: Response, fractions: Array, at: int, minus: Response | None =
         orientation, alignment = orientation - minus.orientation[at], alignment - minus.alignment[at]
         energy = abs(one.energy_mhz[at] - minus.energy_mhz[at])
     turned, tilted = vector_and_tensor_bounds(one.partners.level.twice_J)
+    turn, slant = float(circular * abs(orientation)), float(tilt * abs(alignment))
+    caps = vector_and_tensor_caps(one.partners, light_mhz)
     return Weighing(
         1.0 if minus is None else 0.0,
-        float(turned * circular * abs(orientation)),
-        float(tilted * tilt * abs(alignment)),
+        turned * turn,
+        tilted * slant,
         float(energy),
+        None if caps is None else (caps[0] * turn, caps[1] * slant),
     )
 
 
 def doubt_of_sublevel(one: Response, light_mhz: Array, fractions: Array, at: int = 0) -> Doubt:
     """Compute the uncertainty of a sublevel's polarisability at m light frequencies, in a0^3."""
-    rest = remainder_terms(one.partners, light_mhz, _weighing(one, fractions, at))
+    rest = remainder_terms(one.partners, light_mhz, _weighing(one, light_mhz, fractions, at))
     return doubt_of(one.terms(light_mhz, fractions, at) | rest, light_mhz.size)
 
 
@@ -193,8 +239,8 @@ def doubt_of_difference(upper: Response, lower: Response, light_mhz: Array, frac
     """Compute the uncertainty of alpha(upper) - alpha(lower); within one level the scalar remainder cancels."""
     terms = add_strengths(upper.terms(light_mhz, fractions, at), lower.terms(light_mhz, fractions, at, sign=-1.0))
     if upper.partners.level.name == lower.partners.level.name:
-        rest = remainder_terms(upper.partners, light_mhz, _weighing(upper, fractions, at, lower))
+        rest = remainder_terms(upper.partners, light_mhz, _weighing(upper, light_mhz, fractions, at, lower))
     else:
-        rest = remainder_terms(upper.partners, light_mhz, _weighing(upper, fractions, at))
-        rest |= remainder_terms(lower.partners, light_mhz, _weighing(lower, fractions, at))
+        rest = remainder_terms(upper.partners, light_mhz, _weighing(upper, light_mhz, fractions, at))
+        rest |= remainder_terms(lower.partners, light_mhz, _weighing(lower, light_mhz, fractions, at))
     return doubt_of(terms | rest, light_mhz.size)

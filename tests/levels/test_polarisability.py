@@ -189,7 +189,7 @@ def test_unstated_strength_makes_no_uncertainty() -> None:
     doubt = polarisability(partners_of(replace(atom(D1, vague), **rest), GROUND), 1064.0).doubts[SCALAR]  # type: ignore[arg-type]
     assert doubt.excludes == ("strength of 780",)
     assert np.isnan(doubt.uncertainty[0])
-    assert doubt.reasons == ("strengths without a stated uncertainty could outweigh those with one",)
+    assert doubt.reasons == ("inputs without a stated uncertainty could outweigh those with one",)
 
 
 def test_ten_thousand_wavelengths_are_one_array_call() -> None:
