@@ -13,13 +13,16 @@ import numpy as np
 from numpy.typing import NDArray
 
 from levels.components import components
+from levels.constants import C, H
 from levels.decaygraph import Graph, State, hyperfine_shares, momenta
+from levels.decays import frequency_mhz_of
 from levels.errors import NotPublished, OutsideValidity, UnknownName
 from levels.manifold import manifold
 from levels.notation import format_half
 from levels.records import Line
 
 Array = NDArray[np.float64]
+W_PER_M2 = 10.0  # 1 mW/cm2
 NOMINAL_PER_S = 1e7  # stands for the rate of a level without a known lifetime, where only shares matter
 
 
@@ -61,6 +64,18 @@ def make_laser(
         if given not in allowed:
             raise UnknownName("component", given, allowed[:8], f"F-F' of {line.atom} {line.name}")
     return Laser(line, component, detuning_mhz, saturation)
+
+
+def saturation_of_intensity(graph: Graph, line: Line, intensity_mw_per_cm2: float) -> float:
+    """Return s = I/I_sat with I_sat = pi h c Gamma^2/(3 lambda^3 A), A being the line's part of the rate Gamma."""
+    branching = graph.branchings[line.upper.name]
+    share = next((channel.share for channel in branching.channels if channel.line.name == line.name), 0.0)
+    if branching.total_per_s is None or share <= 0:
+        hint = "give the saturation instead, or supply it by a lab overlay"
+        raise NotPublished("Einstein A (or lifetime and branching)", f"{line.atom} {line.name}", hint)
+    wavelength_m = C / (frequency_mhz_of(line) * 1e6)
+    saturating = np.pi * H * C * branching.total_per_s / (3 * wavelength_m**3 * share)
+    return float(intensity_mw_per_cm2 * W_PER_M2 / saturating)
 
 
 def excitation(graph: Graph, laser: Laser, field_gauss: float = 0.0) -> Array:

@@ -13,11 +13,12 @@ from typing import Any
 import numpy as np
 from numpy.typing import NDArray
 
-from levels import markov
+from levels import absorbing
 from levels.branching import DATA, METASTABLE, RULE, UNKNOWN
 from levels.decaygraph import Graph, State
 from levels.lasers import Laser
 from levels.leaktime import seconds_before_loss
+from levels.records import Level
 from levels.walks import Outcome, Walk, follow, walk_of
 
 Array = NDArray[np.float64]
@@ -103,9 +104,28 @@ def leaks_of(graph: Graph, lasers: Sequence[Laser], dark_after_s: float, field_g
     )
 
 
+def metastable_elsewhere(leaks: Leaks) -> list[Level]:
+    """List the metastable levels below the cooling cycle that no decay reaches.
+
+    Collisions, blackbody radiation or other light can fill them.
+    """
+    graph, lasers = leaks.walk.graph, leaks.walk.lasers
+    seen = {item.state.level.name for item in leaks.reached} | {laser.line.lower.name for laser in lasers}
+    highest = max((laser.line.upper.energy.value if laser.line.upper.energy else 0.0) for laser in lasers)
+    return [
+        level
+        for level in graph.atom.levels
+        if graph.branchings[level.name].closure == METASTABLE
+        and level.name not in seen
+        and level.energy is not None
+        and level.energy.value < highest
+        and level.name != graph.atom.isotope.ground
+    ]
+
+
 def endless(photons: float) -> float | None:
     """Return the number, or None for a walk without end."""
-    return None if photons > markov.ENDLESS else photons
+    return None if photons > absorbing.ENDLESS else photons
 
 
 def row_of(walk: Walk, stop: int, bound: Bound) -> Array:
@@ -178,7 +198,7 @@ def _reached(
         through = tuple(names[p] for p in order if parents[p, k] > 1e-3 * parents[:, k].max())
         rate = graph.rates[k]
         lifetime = None if np.isnan(rate) or rate == 0 else 1.0 / float(rate)
-        cause = DECAY if resonant[k] > 1e-3 * share[k] else OFF_RESONANT
+        cause = DECAY if resonant[k] > 0.5 * share[k] else OFF_RESONANT
         found.append(Reached(k, state, float(least[k]), float(share[k]), cause, through, float(back[k]), lifetime))
     return tuple(sorted(found, key=lambda item: -item.at_most))
 

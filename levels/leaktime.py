@@ -7,7 +7,7 @@ of the multiplicities. Unknown branching is taken at its worst, as in the number
 import numpy as np
 from numpy.typing import NDArray
 
-from levels import markov
+from levels import absorbing
 from levels.walks import Outcome, Walk
 
 Array = NDArray[np.float64]
@@ -51,5 +51,5 @@ def seconds_before_loss(walk: Walk, outcome: Outcome, entered: Array) -> tuple[f
         loss[k] = graph.rates[k] * missing if missing > 1e-12 else 0.0
     start = int(walk.stops[0])
     order = np.array([start, *(k for k in range(graph.size) if k != start)])
-    chain = markov.reduce(*markov.closed_off(rates[np.ix_(order, order)][None], loss[order][None]))
-    return float(markov.visits(chain)[0].sum()), ""
+    chain = absorbing.reduce(*absorbing.closed_off(rates[np.ix_(order, order)][None], loss[order][None]))
+    return float(absorbing.visits(chain)[0].sum()), ""

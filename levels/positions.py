@@ -62,7 +62,13 @@ def averaged(states: Manifold, members: Indices) -> tuple[NDArray[np.float64], N
 
 def place(line: Line, lower: Sequence[Label], upper: Sequence[Label], field_gauss: float = 0.0) -> Place:
     """Locate the mean of the components between lower and upper states: one pair, or the two of a crossover."""
-    below, above = manifold(line.lower, field_gauss), manifold(line.upper, field_gauss)
+    return place_between(line, manifold(line.lower, field_gauss), manifold(line.upper, field_gauss), lower, upper)
+
+
+def place_between(
+    line: Line, below: Manifold, above: Manifold, lower: Sequence[Label], upper: Sequence[Label]
+) -> Place:
+    """Locate the same between levels that are solved already."""
     low = averaged(below, np.array([[below.index_of(label) for label in lower]]))
     up = averaged(above, np.array([[above.index_of(label) for label in upper]]))
     return Place(line, float((up[0] - low[0])[0]), float((up[1] - low[1])[0]), low[2], up[2])

@@ -16,7 +16,7 @@ from numpy.typing import NDArray
 
 from levels.decaygraph import Graph
 from levels.lasers import Laser
-from levels.leaks import NEGLIGIBLE, Leaks, endless, leaks_of
+from levels.leaks import LOST, NEGLIGIBLE, Leaks, Reached, endless, leaks_of
 from levels.repumpers import Repumper, landing, repumpers_of
 from levels.walks import Outcome, Pumping, Walk, follow, walk_of
 
@@ -27,6 +27,7 @@ MOST_PAIRS = 120
 MOST_LASERS = 4
 GROWN_FROM = 3
 COMMON_NM = (350.0, 1700.0)
+SHORTEST_S = 1e-6  # a leak that decays within this time is over before a repumper acts
 SAME = 1e-3  # relative difference of photon numbers below which they rank as equal
 
 
@@ -66,7 +67,7 @@ class Search:
 def repump(graph: Graph, lasers: Sequence[Laser], dark_after_s: float, field_gauss: float = 0.0) -> Search:
     """Find what brings the atom back."""
     leaks = leaks_of(graph, lasers, dark_after_s, field_gauss)
-    leaking = [item.position for item in leaks.reached if item.returns < 1 - 1e-9]
+    leaking = [item.position for item in leaks.reached if item.returns < 1 - 1e-9 and _stays(item)]
     passing = [k for k in leaking if leaks.walk.place(k) < 0]
     walk = walk_of(graph, lasers, dark_after_s, field_gauss, passing) if passing else leaks.walk
     tried = Tried(walk, leaks)
@@ -86,6 +87,11 @@ def repump(graph: Graph, lasers: Sequence[Laser], dark_after_s: float, field_gau
     elif singles:
         bounds.append("pairs were not searched: one repumper closes the cycle")
     return Search(leaks, tuple(sorted(singles, key=tried.rank)), tuple(sorted(sets, key=tried.rank)), tuple(bounds))
+
+
+def _stays(item: Reached) -> bool:
+    """Whether a state lives long enough for a repumper to act."""
+    return item.fate == LOST or item.lifetime_s is None or item.lifetime_s > SHORTEST_S
 
 
 def _pairs(

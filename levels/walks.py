@@ -12,7 +12,7 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from levels import markov
+from levels import absorbing
 from levels.branching import METASTABLE
 from levels.decaygraph import Graph
 from levels.lasers import Laser, excitation, resonant_states
@@ -163,7 +163,7 @@ def follow(walk: Walk, pumpings: Sequence[Pumping], worst: bool) -> Outcome:
             moves[free, stop] = options[chosen[free, at]]
         chain = _chain(moves, dark, kept)
         ahead = np.zeros((count, size))
-        ahead[:, kept] = markov.values(chain, walk.cooling[kept])
+        ahead[:, kept] = absorbing.values(chain, walk.cooling[kept])
         better = np.array(
             [_best(ahead @ options.T, chosen[:, at], worst) for at, (_, options) in enumerate(walk.choices)],
             dtype=np.int64,
@@ -172,7 +172,7 @@ def follow(walk: Walk, pumpings: Sequence[Pumping], worst: bool) -> Outcome:
             break
         chosen = better.T
     visits = np.zeros((count, size))
-    visits[:, kept] = markov.visits(chain)
+    visits[:, kept] = absorbing.visits(chain)
     return Outcome(ahead[:, 0], visits, ahead, moves, chosen)
 
 
@@ -213,13 +213,13 @@ def _alive(walk: Walk, moves: Array, dark: NDArray[np.bool_]) -> Indices:
     return np.flatnonzero(reached & ~dark.all(axis=0))
 
 
-def _chain(moves: Array, dark: NDArray[np.bool_], kept: Indices) -> markov.Reduced:
+def _chain(moves: Array, dark: NDArray[np.bool_], kept: Indices) -> absorbing.Reduced:
     """Eliminate the stops that are kept; what leads to the others is lost."""
     inner = moves[:, kept[:, None], kept]
     others = np.ones(moves.shape[-1], dtype=np.bool_)
     others[kept] = False
     loss = lost_from(moves, dark)[:, kept] + moves[:, kept][:, :, others].sum(axis=-1)
-    return markov.reduce(*markov.closed_off(inner, loss))
+    return absorbing.reduce(*absorbing.closed_off(inner, loss))
 
 
 def _best(values: Array, now: Indices, worst: bool) -> Indices:
