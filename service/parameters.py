@@ -51,11 +51,26 @@ def _reader(dimension: str, unit: str, low: float, high: float) -> BeforeValidat
     return BeforeValidator(read)
 
 
-NUMBER_OR_TEXT = WithJsonSchema({"anyOf": [{"type": "number"}, {"type": "string"}]}, mode="validation")
-FieldGauss = Annotated[float, _reader("field", "G", -LARGEST_FIELD_GAUSS, LARGEST_FIELD_GAUSS), NUMBER_OR_TEXT]
-LargestField = Annotated[float, _reader("field", "G", 1e-6, LARGEST_FIELD_GAUSS), NUMBER_OR_TEXT]
-SplittingMhz = Annotated[float, _reader("frequency", "MHz", -1e9, 1e9), NUMBER_OR_TEXT]
-SpreadMhz = Annotated[float, _reader("frequency", "MHz", 0.0, 1e9), NUMBER_OR_TEXT]
+HALF = "[+-]?[0-9]{1,3}(/2|\\.[05])?"
+NUMBER_WITH_UNIT = {
+    "type": "string",
+    "pattern": "^[+-]?([0-9]+\\.?[0-9]*|\\.[0-9]+)([eE][+-]?[0-9]{1,3})? ?[A-Za-z]*$",
+}
+NUMBER_OR_TEXT = WithJsonSchema({"anyOf": [{"type": "number"}, NUMBER_WITH_UNIT]}, mode="validation")
+
+
+def _number_schema(low: float, high: float) -> WithJsonSchema:
+    number = {"type": "number", "minimum": low, "maximum": high}
+    return WithJsonSchema({"anyOf": [number, NUMBER_WITH_UNIT]}, mode="validation")
+
+
+FIELD = (-LARGEST_FIELD_GAUSS, LARGEST_FIELD_GAUSS)
+UP_TO_FIELD = (1e-6, LARGEST_FIELD_GAUSS)
+ANY_MHZ, SPREAD_MHZ = (-1e9, 1e9), (0.0, 1e9)
+FieldGauss = Annotated[float, _reader("field", "G", *FIELD), _number_schema(*FIELD)]
+LargestField = Annotated[float, _reader("field", "G", *UP_TO_FIELD), _number_schema(*UP_TO_FIELD)]
+SplittingMhz = Annotated[float, _reader("frequency", "MHz", *ANY_MHZ), _number_schema(*ANY_MHZ)]
+SpreadMhz = Annotated[float, _reader("frequency", "MHz", *SPREAD_MHZ), _number_schema(*SPREAD_MHZ)]
 
 
 _parse_sublevel = lru_cache(4096)(parse_sublevel)
@@ -78,18 +93,18 @@ Sublevel = Annotated[
     tuple[int, int],
     BeforeValidator(_sublevel),
     PlainSerializer(lambda pair: _format_sublevel(*pair), return_type=str),
-    WithJsonSchema({"type": "string", "description": "F,m at zero field, as `2,-1` or `3/2,1/2`; F is J for I = 0"}),
+    WithJsonSchema({"type": "string", "pattern": f"^{HALF},{HALF}$", "description": "F,m at zero field, as `2,-1`"}),
 ]
 Half = Annotated[
     int,
     BeforeValidator(_half),
     PlainSerializer(lambda twice: format_half(twice), return_type=str),
-    WithJsonSchema({"type": "string", "description": "an integer or half-integer, as `2`, `3/2` or `1.5`"}),
+    WithJsonSchema({"type": "string", "pattern": f"^{HALF}$", "description": "an integer or half-integer, as `3/2`"}),
 ]
 POLARISATIONS = {1: "sigma+", 0: "pi", -1: "sigma-"}
 PolarisationName = Annotated[
     int,
     BeforeValidator(_polarisation),
     PlainSerializer(lambda q: POLARISATIONS[q], return_type=str),
-    WithJsonSchema({"type": "string", "description": "sigma+, pi or sigma- (the plus sign as %2B in a query string)"}),
+    WithJsonSchema({"type": "string", "enum": ["sigma+", "pi", "sigma-"]}),
 ]
