@@ -1,8 +1,10 @@
 """Runs the application under uvicorn, in this process or in several."""
 
 import os
+import subprocess
 import sys
 import tempfile
+from pathlib import Path
 
 import uvicorn
 
@@ -23,6 +25,11 @@ def run(settings: Settings) -> int:
         return _serve(settings)
 
 
+def _audit(overlay: Path) -> None:
+    """Print what the audit finds in an overlay that holds; in a process of its own, whose memory no worker keeps."""
+    subprocess.run([sys.executable, "-m", "levels.audit", str(overlay)], stdout=sys.stderr, check=False)
+
+
 def _serve(settings: Settings) -> int:
     if settings.overlay is not None:
         try:
@@ -30,6 +37,7 @@ def _serve(settings: Settings) -> int:
         except DataError as error:
             print(f"sublevel serve: {error}", file=sys.stderr)
             return 2
+        _audit(settings.overlay)
     uvicorn.run(
         "service.app:build_app",
         factory=True,

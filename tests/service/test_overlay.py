@@ -68,6 +68,13 @@ def test_every_answer_that_used_it_says_so(tmp_path: Path) -> None:
         stop_server(process)
 
 
+def test_the_start_prints_what_the_audit_finds(tmp_path: Path) -> None:
+    """An overlay that holds but breaks a rule of physics is served, and the log says which rule and where."""
+    write(tmp_path, ourlab='[levels."5s_2S1/2".hyperfine.87]\nA = { value = "3147.341305(1) MHz" }\n')
+    process, _ = start_server(SUBLEVEL_OVERLAY=str(tmp_path))
+    assert "Rb: levels.5s_2S1/2.A.85.87: A ratio" in stop_server(process).decode()
+
+
 @pytest.mark.parametrize("kind", BAD)
 def test_a_bad_overlay_stops_the_start(kind: str, tmp_path: Path) -> None:
     """The server does not start, though another file of the overlay is good; it prints file, key and reason."""
