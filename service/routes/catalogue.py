@@ -13,7 +13,7 @@ from levels.records import Isotope, Level, Line
 from levels.summary import CoolingLine, cooling_lines
 from levels.tally import tally
 from service import VERSION
-from service.answers import NOT_IN_CATALOGUE, Answer, curated, records_table
+from service.answers import NOT_IN_CATALOGUE, Answer, curated, records_table, sources_of
 from service.context import Context
 from service.question import Asked, Question
 from service.schemas import Answered, Curated, Half, Shape, Texts
@@ -332,7 +332,8 @@ def _listed(content: dict[str, Any], key: str, records: Records, used: Sequence[
 
 def sources(context: Context, path: Mapping[str, str], asked: Asked) -> Answer:
     """Every publication that a value rests on, with the values."""
-    return Answer({}, used=list(everything(context)))
+    used = list(everything(context))
+    return Answer({}, records_table(sources_of(used, context.publications)), columnar=False, used=used)
 
 
 def source(context: Context, path: Mapping[str, str], asked: Asked) -> Answer:
@@ -342,7 +343,8 @@ def source(context: Context, path: Mapping[str, str], asked: Asked) -> Answer:
         raise UnknownName("source", path["id"], nearest(path["id"], context.publications))
     mine = ((name, value) for name, value in everything(context) if known.id in value.sources)
     used = [(name, replace(value, source=known.id)) for name, value in mine]
-    return Answer({"id": known.id, "citation": known.citation, "doi": known.doi, "csl": dict(known.csl)}, used=used)
+    content = {"id": known.id, "citation": known.citation, "doi": known.doi, "csl": dict(known.csl)}
+    return Answer(content, records_table(sources_of(used, context.publications)), columnar=False, used=used)
 
 
 def release(context: Context, path: Mapping[str, str], asked: Asked) -> Answer:

@@ -144,3 +144,26 @@ def test_release_tells_each_species(client: TestClient) -> None:
     assert answer["values"] == answer["checked"] + answer["recalled"] + answer["computed"]
     assert answer["checked"] >= 0.5 * answer["values"]
     assert len(answer["tally"]) == answer["species"]
+
+
+@pytest.mark.parametrize(
+    "path",
+    [
+        "/v1/atoms",
+        "/v1/atoms/87Rb",
+        "/v1/atoms/87Rb/levels",
+        "/v1/atoms/87Rb/lines",
+        "/v1/lines",
+        "/v1/levels",
+        "/v1/sources",
+        "/v1/sources/ye1996",
+        "/v1/release",
+        "/v1/book",
+    ],
+)
+def test_everything_is_browsable_as_csv(path: str, client: TestClient) -> None:
+    """Each list of the catalogue is a CSV table with a header and rows of equal length."""
+    header, *rows = csv.reader(io.StringIO(client.get(f"{path}?format=csv").text))
+    assert len(header) > 4
+    assert rows
+    assert {len(row) for row in rows} == {len(header)}
