@@ -19,7 +19,7 @@ from levels.decaygraph import Graph, State
 from levels.lasers import Laser
 from levels.leaktime import seconds_before_loss
 from levels.records import Level
-from levels.walks import Outcome, Walk, follow, walk_of
+from levels.walks import Outcome, Walk, emptied_off_resonance, follow, walk_of
 
 Array = NDArray[np.float64]
 LOST, RETURNS, EITHER = "lost", "returns", "either"
@@ -64,6 +64,7 @@ class Leaks:
     """
 
     walk: Walk
+    emptied: tuple[int, ...]
     outcome: Outcome
     photons: float | None
     most: float | None
@@ -78,7 +79,8 @@ class Leaks:
 
 def leaks_of(graph: Graph, lasers: Sequence[Laser], dark_after_s: float, field_gauss: float = 0.0) -> Leaks:
     """Follow the atom under the present lasers to every state it can reach."""
-    walk = walk_of(graph, lasers, dark_after_s, field_gauss)
+    emptied = emptied_off_resonance(graph, lasers, dark_after_s, field_gauss)
+    walk = walk_of(graph, lasers, dark_after_s, field_gauss, emptied)
     low, high = follow(walk, [()], worst=True), follow(walk, [()], worst=False)
     flow, parents, resonant = _flows(walk, low, np.max)
     least, _, _ = _flows(walk, low, np.min)
@@ -92,6 +94,7 @@ def leaks_of(graph: Graph, lasers: Sequence[Laser], dark_after_s: float, field_g
     seconds, reason = (None, CLOSED) if photons is None else seconds_before_loss(walk, low, flow)
     return Leaks(
         walk,
+        emptied,
         low,
         photons,
         most,

@@ -69,7 +69,7 @@ def repump(graph: Graph, lasers: Sequence[Laser], dark_after_s: float, field_gau
     leaks = leaks_of(graph, lasers, dark_after_s, field_gauss)
     leaking = [item.position for item in leaks.reached if item.returns < 1 - 1e-9 and _stays(item)]
     passing = [k for k in leaking if leaks.walk.place(k) < 0]
-    walk = walk_of(graph, lasers, dark_after_s, field_gauss, passing) if passing else leaks.walk
+    walk = walk_of(graph, lasers, dark_after_s, field_gauss, leaks.emptied, passing) if passing else leaks.walk
     tried = Tried(walk, leaks)
     first = repumpers_of(walk, leaking, tried.chance, lasers)
     bounds = []

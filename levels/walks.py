@@ -2,8 +2,9 @@
 
 A walk stops at lower states that lasers drive, at dark states, and at states whose branching is unknown. From a driven
 state one scattering leads on, by the lasers' excitation rates and the decays that follow; saturation changes how long
-that takes, not where it leads. What is unknown is bounded: the same walks with every unknown decay at its worst and at
-its best, found by policy iteration.
+that takes, not where it leads. A state that lasers reach only off resonance counts as driven when they empty it faster
+than the cycle fills it, else as dark. What is unknown is bounded: the same walks with every unknown decay at its worst
+and at its best, found by policy iteration.
 """
 
 from collections.abc import Sequence
@@ -15,7 +16,7 @@ from numpy.typing import NDArray
 from levels import absorbing
 from levels.branching import METASTABLE
 from levels.decaygraph import Graph
-from levels.lasers import Laser, excitation, resonant_states
+from levels.lasers import NOMINAL_PER_S, Laser, excitation, resonant_states
 
 Array = NDArray[np.float64]
 Indices = NDArray[np.int64]
@@ -88,17 +89,51 @@ def light_of(graph: Graph, lasers: Sequence[Laser], field_gauss: float) -> list[
     return tables
 
 
+def resonant_mask(graph: Graph, lasers: Sequence[Laser]) -> NDArray[np.bool_]:
+    """Mark the states that some laser is meant to excite."""
+    mask = np.zeros(graph.size, dtype=np.bool_)
+    for laser in lasers:
+        mask[[graph.at(s.level, s.twice_F) for s in resonant_states(graph, laser)]] = True
+    return mask
+
+
+def emptied_off_resonance(
+    graph: Graph, lasers: Sequence[Laser], dark_after_s: float, field_gauss: float = 0.0
+) -> tuple[int, ...]:
+    """Find the states that lasers empty off resonance, within `dark_after_s` and faster than the cycle fills them."""
+    light = np.sum(light_of(graph, lasers, field_gauss), axis=0)
+    excited = light.sum(axis=1)
+    resonant = resonant_mask(graph, lasers)
+    weak = np.flatnonzero((excited > 1.0 / dark_after_s) & ~resonant)
+    if not weak.size:
+        return ()
+    walk = walk_of(graph, lasers, dark_after_s, field_gauss, more_stops=weak.tolist())
+    outcome = follow(walk, [()], worst=True)
+    filled = outcome.visits[0] @ walk.moves / float(outcome.visits[0] @ walk.cooling)
+    start = int(walk.stops[0])
+    upper = graph.rates[int(light[start].argmax())]
+    gamma = NOMINAL_PER_S if np.isnan(upper) else upper
+    cycle = excited[start] * gamma / (gamma + 2 * excited[start])
+    return tuple(int(k) for k in weak if excited[k] >= filled[walk.place(int(k))] * cycle)
+
+
 def walk_of(
-    graph: Graph, lasers: Sequence[Laser], dark_after_s: float, field_gauss: float = 0.0, more_stops: Sequence[int] = ()
+    graph: Graph,
+    lasers: Sequence[Laser],
+    dark_after_s: float,
+    field_gauss: float = 0.0,
+    emptied: Sequence[int] = (),
+    more_stops: Sequence[int] = (),
 ) -> Walk:
-    """Set up the walks of an atom under lasers, the first of which cools; `more_stops` are states to stop at too."""
+    """Set up the walks of an atom under lasers, the first of which cools.
+
+    `emptied` are the states that lasers empty off resonance, `more_stops` states to stop at too.
+    """
     tables = light_of(graph, lasers, field_gauss)
     light = np.sum(tables, axis=0)
     excited = light.sum(axis=1)
-    resonant = np.zeros(graph.size, dtype=np.bool_)
-    for laser in lasers:
-        resonant[[graph.at(s.level, s.twice_F) for s in resonant_states(graph, laser)]] = True
-    driven = resonant | (excited > 1.0 / dark_after_s)
+    driven = resonant_mask(graph, lasers)
+    driven[list(emptied)] = True
     dark = dark_states(graph, dark_after_s) & ~driven
     unknown = np.array([len(options) > 1 for options in graph.options]) & ~driven & ~dark
     first = resonant_states(graph, lasers[0])[0]

@@ -17,7 +17,7 @@ from levels.racah import six_j_square
 from levels.records import Atom, Line
 from levels.repump import repump
 from levels.repumpfacts import facts_of, reach_of, strongest_upper
-from levels.walks import follow, walk_of
+from levels.walks import emptied_off_resonance, follow, resonant_mask, walk_of
 from tests.atoms_for_tests import RATE, atom, decay, ladder_atom, lambda_atom, named, unpublished_atom, without_lifetime
 
 DARK_S = 0.01
@@ -36,7 +36,8 @@ def photons_of_walks(graph: Graph, present: list[Laser], count: int, seed: int) 
     rng = np.random.default_rng(seed)
     tables = [_table(graph, one) for one in present]
     light = np.sum(tables, axis=0)
-    driven, cooling = light.sum(axis=1) > 1 / DARK_S, tables[0].sum(axis=1) > 1 / DARK_S
+    driven = resonant_mask(graph, present)
+    cooling = driven & (tables[0].sum(axis=1) > 0)
     rows: list[np.ndarray] = []
     for state in range(graph.size):
         options, rate = graph.options[state], graph.rates[state]
@@ -141,6 +142,22 @@ def test_hyperfine_leak_is_the_share_of_the_neighbour() -> None:
     expected = sum(ratios[F] * leaves[F] for F in ratios) / (1 + sum(ratios.values()))
     assert found.photons == pytest.approx(1 / expected, rel=1e-9)
     assert [(item.state.twice_F, item.cause, item.fate) for item in found.reached] == [(2, OFF_RESONANT, LOST)]
+
+
+def test_light_that_empties_faster_than_it_fills_is_no_leak() -> None:
+    """A hyperfine level that the cooling light itself empties faster than the cycle fills it is driven, else dark."""
+    S = named("s_2S1/2", 1, 1, 0.0, 3, A=3400.0)
+    P = named("p_2P3/2", 3, -1, 12_800.0, 3, A=85.0)
+    some = atom([decay(S, P, 1.0, name="cool")], twice_I=3)
+    graph = graph_of(some, True)
+    weak = [make_laser(find(some, "cool"), (4, 6), 0.0, 1.0)]
+    assert emptied_off_resonance(graph, weak, 10.0) == ()
+    near = replace(S, A=replace(S.A, value=1.0)) if S.A else S
+    some = atom([decay(near, P, 1.0, name="cool")], twice_I=3)
+    graph = graph_of(some, True)
+    strong = [make_laser(find(some, "cool"), (4, 6), 0.0, 1.0)]
+    assert [graph.states[k].twice_F for k in emptied_off_resonance(graph, strong, 10.0)] == [2]
+    assert leaks_of(graph, strong, 10.0).photons is None
 
 
 def test_detuning_towards_the_neighbour_leaks_more() -> None:
