@@ -15,7 +15,7 @@ from levels.pumping import prepare, pump, solve
 from levels.scan import COLUMNS, Scan, Solver, check_scan, solve_points
 from levels.setup import BeamSetup, Optics, Setup, Share, Tuning, build
 from levels.vary import PARAMETERS, Axis
-from tests.levels.pumping_records import CA40, RB87_D1
+from tests.levels.pumping_records import CA40, RB87_D1, simple_atom
 
 BLUE, RED, D1 = CA40.lines[0], CA40.lines[1], RB87_D1.lines[0]
 WAVE = Optics(polariser_deg=0.0, plates=(plate("half", 10.0), plate("quarter", 5.0)))
@@ -156,15 +156,22 @@ def test_pumping_and_cycling_columns() -> None:
 
 
 def test_start_populations_count_where_they_decide() -> None:
-    """With the red beam dark nothing leaves D3/2: atoms that start in one of its sublevels all stay there."""
-    setup = ion()
-    dark = replace(setup, beams=(setup.beams[0], replace(setup.beams[1], saturation=0.0)))
-    start = (Share(RED.lower, (3, 3), 1.0),)
-    whole = scan(axis("detuning", -10.0, beam="blue"), setup=dark, columns=("fullest", "fullest_share"), initial=start)
-    check_scan(whole)
-    columns = solve_points(whole, 0, 1).columns
-    assert columns["fullest"] == ["D3/2 3/2,3/2"]
-    assert columns["fullest_share"] == pytest.approx([1.0], abs=1e-9)
+    """Sigma+ light on J = 2 - 1 leaves m = 1 and m = 2 dark: atoms that start in one of them all stay there."""
+    atom = simple_atom(4, 2)
+    line = atom.lines[0]
+    beam = BeamSetup("a", line, Optics(handedness="right"), direction=(0.0, 0.0, 1.0), saturation=1.0)
+    for m in (2, 4):
+        whole = scan(
+            axis("detuning", -10.0, beam="a"),
+            setup=Setup(atom, (beam,), (0.0, 0.0, 1.0)),
+            columns=("fullest", "fullest_share", "unique"),
+            initial=(Share(line.lower, (4, m), 1.0),),
+        )
+        check_scan(whole)
+        columns = solve_points(whole, 0, 1).columns
+        assert columns["fullest"] == [f"g 2,{m // 2}"]
+        assert columns["fullest_share"] == pytest.approx([1.0], abs=1e-9)
+        assert columns["unique"] == [0.0]
 
 
 @pytest.mark.parametrize(
