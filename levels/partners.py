@@ -194,8 +194,8 @@ class Weighing:
     """
 
     scalar: float = 1.0
-    turned: float = 0.0
-    tilted: float = 0.0
+    turned: float | Array = 0.0
+    tilted: float | Array = 0.0
     moved_mhz: float = 0.0
     caps: tuple[Array, Array] | None = None
 

@@ -6,9 +6,10 @@ import numpy as np
 import pytest
 
 from levels.constants import MHZ_NM
-from levels.lightshift import Light, couple, drive_of, operator, shift_of
-from levels.partners import partners_of
+from levels.lightshift import Light, couple, drive_of, operator, scale_mhz2, shift_of
+from levels.partners import Partners, partners_of
 from levels.response import doubt_of_difference, doubt_of_sublevel, response
+from levels.shiftspread import diagonal
 from tests.levels.lightshift_records import D1, D2, INVENTED, MIDDLE, RB87
 from tests.records_for_tests import quantity
 
@@ -20,16 +21,14 @@ FIELDS = np.array([0.0, 3.2, 150.0, -40.0])
 
 
 @pytest.mark.parametrize("partners", [RB, ZZ], ids=["J = 1/2", "J = 2, lines both ways"])
-def test_response_is_the_diagonal_of_the_operator(partners: object) -> None:
+def test_response_is_the_diagonal_of_the_operator(partners: Partners) -> None:
     """For every sublevel, several fields and light of any shape the sum of poles gives the operator's diagonal."""
-    assert partners in (RB, ZZ)
-    here_partners = RB if partners is RB else ZZ
     light = Light(755.5, 1e6, drive_of(35.0, 20.0, 50.0))
     for at, field in enumerate(FIELDS):
-        here, coupled = couple(here_partners, float(field))
-        diagonal = np.diag(operator(here, coupled, light, here_partners.remainder.value)).real
+        here, coupled = couple(partners, float(field))
+        diagonal = np.diag(operator(here, coupled, light, partners.remainder.value)).real
         for k, label in enumerate(here.labels):
-            one = response(here_partners, label, FIELDS)
+            one = response(partners, label, FIELDS)
             alpha = float(np.array(light.fractions) @ one.by_drive(light.frequency_mhz, at)[:, 0])
             assert shift_of(alpha, 1e6) == pytest.approx(diagonal[k], rel=1e-11)
             assert one.along_field(light.frequency_mhz)[:, at] == pytest.approx(
@@ -107,3 +106,30 @@ def test_difference_of_levels_keeps_every_part() -> None:
     assert np.isnan(apart.uncertainty[0])
     assert any("5p_2P3/2" in reason for reason in apart.reasons)
     assert apart.stated[0] > 0
+
+
+@pytest.mark.parametrize("partners", [RB, ZZ], ids=["J = 1/2", "J = 2, lines both ways"])
+def test_all_sublevels_at_once(partners: Partners) -> None:
+    """The sums for all sublevels together have the values and uncertainties of one sublevel at a time."""
+    light = Light(905.0, 1e6, drive_of(35.0, 20.0, 50.0))
+    here, coupled = couple(partners, 12.0)
+    found = diagonal(partners, here, coupled, light)
+    nu, fractions = np.array([light.frequency_mhz]), np.array(light.fractions)
+    for k, label in enumerate(here.labels):
+        one = response(partners, label, 12.0)
+        assert found.polarisability_a03[k] == pytest.approx(fractions @ one.by_drive(nu)[:, 0], rel=1e-11)
+        doubt = doubt_of_sublevel(one, nu, fractions)
+        assert found.doubt.stated[k] == pytest.approx(doubt.stated[0], rel=1e-9)
+        assert found.doubt.uncertainty[k] == pytest.approx(doubt.uncertainty[0], rel=1e-9, nan_ok=True)
+        assert found.doubt.reasons == doubt.reasons
+
+
+def test_excited_share_is_that_of_a_driven_two_level_atom() -> None:
+    """Far off resonance the excited share is (Omega/2 Delta)^2, with the Rabi frequency of the stretched transition."""
+    light = Light(MHZ_NM / (384230484.0 - 1e5), 1e4, drive_of(0.0, 45.0, 0.0))
+    here, coupled = couple(RB, 0.0)
+    found = diagonal(RB, here, coupled, light)
+    top = here.labels.index((4, 4))
+    gap = float(np.min(np.abs(coupled[1].gap_mhz[-1, top] - light.frequency_mhz)))
+    rabi = 2 * np.sqrt(scale_mhz2(1e4)) * 5.978 / 2  # the stretched element is d/sqrt(2J'+1) with J' = 3/2
+    assert found.excited[top] == pytest.approx((rabi / (2 * gap)) ** 2, rel=1e-3)
