@@ -8,7 +8,6 @@ from collections.abc import Sequence
 from dataclasses import dataclass, replace
 
 import numpy as np
-from numpy.typing import NDArray
 
 from levels.beams import (
     Beam,
@@ -24,6 +23,7 @@ from levels.errors import NotPublished, OutsideValidity
 from levels.geometry import (
     Axes,
     Complex,
+    Vector,
     as_direction,
     as_polarisation,
     axes_of,
@@ -130,8 +130,8 @@ def build_at(setup: Setup, place: int, axes: Axes) -> Beam:
 
 def build_beam(atom: Atom, beam: BeamSetup, axes: Axes) -> Beam:
     """Make a beam of its description."""
-    direction = _direction(beam, axes)
-    jones = jones_of(beam, direction, axes)
+    direction = direction_of(beam.direction, beam.angle_to_field_deg, beam.around_field_deg, axes)
+    jones = jones_of(beam.optics, direction, axes, beam.line.multipole)
     wanted_q, wanted_F = _wanted(beam)
     return make_beam(
         beam.name,
@@ -146,30 +146,32 @@ def build_beam(atom: Atom, beam: BeamSetup, axes: Axes) -> Beam:
     )
 
 
-def _direction(beam: BeamSetup, axes: Axes) -> NDArray[np.float64]:
-    if (beam.direction is None) == (beam.angle_to_field_deg is None):
-        raise OutsideValidity("direction", "", "either a vector or angles from the field")
-    if beam.angle_to_field_deg is not None:
-        return direction_from_angles(axes, beam.angle_to_field_deg, beam.around_field_deg)
-    return as_direction("direction", np.asarray(beam.direction))
+def direction_of(
+    vector: Triple | None, angle_to_field_deg: float | None, around_field_deg: float, axes: Axes
+) -> Vector:
+    """Return a beam's direction as a unit vector, from a vector or from angles from the field."""
+    if (vector is None) == (angle_to_field_deg is None):
+        given = "nothing" if vector is None else "both"
+        raise OutsideValidity("direction", given, "either a vector or an angle to the field")
+    if angle_to_field_deg is not None:
+        return direction_from_angles(axes, angle_to_field_deg, around_field_deg)
+    return as_direction("direction", np.asarray(vector))
 
 
-def jones_of(beam: BeamSetup, direction: NDArray[np.float64], axes: Axes) -> Complex:
+def jones_of(optics: Optics, direction: Vector, axes: Axes, multipole: str = "E1") -> Complex:
     """Return the Jones vector of a beam on its transverse axes, impurity included."""
-    optics = beam.optics
     given = [spoken for name, spoken in POLARISED_BY.items() if getattr(optics, name) is not None]
     if len(given) != 1:
         allowed = f"exactly one of {', '.join(POLARISED_BY.values())}"
         raise OutsideValidity("polarisation", ", ".join(given) or "nothing", allowed)
     if optics.plates and optics.polariser_deg is None:
         raise OutsideValidity("polarisation", given[0], "a polariser in front of the wave plates")
-    pure = _pure(beam, direction, axes)
+    pure = _pure(optics, direction, axes, multipole)
     pure = pure / float(np.linalg.norm(pure))
     return with_impurity(pure, optics.impurity, optics.phase_deg) if optics.impurity else pure
 
 
-def _pure(beam: BeamSetup, direction: NDArray[np.float64], axes: Axes) -> Complex:
-    optics = beam.optics
+def _pure(optics: Optics, direction: Vector, axes: Axes, multipole: str) -> Complex:
     if optics.linear_deg is not None:
         return linear(optics.linear_deg)
     if optics.ellipticity_deg is not None:
@@ -179,7 +181,7 @@ def _pure(beam: BeamSetup, direction: NDArray[np.float64], axes: Axes) -> Comple
     if optics.polariser_deg is not None:
         return through_plates(optics.polariser_deg, optics.plates)
     if optics.best_q is not None:
-        return best_jones(direction, axes, optics.best_q, beam.line.multipole, _array(optics.reference))
+        return best_jones(direction, axes, optics.best_q, multipole, _array(optics.reference))
     basis = transverse_basis(direction, _array(optics.reference))
     if optics.vector is not None:
         vector: Complex = basis @ as_polarisation(direction, np.array(optics.vector))
@@ -188,7 +190,7 @@ def _pure(beam: BeamSetup, direction: NDArray[np.float64], axes: Axes) -> Comple
     return np.asarray(basis @ polarisation_vector(direction, (pair[0], pair[1]), _array(optics.reference)))
 
 
-def _array(triple: Triple | None) -> NDArray[np.float64] | None:
+def _array(triple: Triple | None) -> Vector | None:
     return None if triple is None else np.array(triple)
 
 
@@ -237,7 +239,7 @@ class Share:
     share: float
 
 
-def populations_of(structure: Structure, shares: Sequence[Share]) -> NDArray[np.float64] | None:
+def populations_of(structure: Structure, shares: Sequence[Share]) -> Vector | None:
     """Return the start populations that shares describe, or None for none: they must add up to 1."""
     if not shares:
         return None

@@ -121,8 +121,8 @@ def varied_magnitude(axes: Axes, values: Sequence[tuple[Axis, float]]) -> float:
 
 def varied_beam(beam: BeamSetup, base: Beam, axes: Axes, values: Sequence[tuple[Axis, float]]) -> BeamSetup:
     """Describe a beam anew, with some of its parameters at new values; `base` is the beam as it was made."""
-    plain = replace(beam, optics=replace(beam.optics, impurity=0.0))
-    kept = ellipse_of(jones_of(plain, base.direction, axes))
+    plain = replace(beam.optics, impurity=0.0)
+    kept = ellipse_of(jones_of(plain, base.direction, axes, beam.line.multipole))
     for axis, value in values:
         if axis.parameter in _OPTICS:
             beam = replace(beam, optics=_OPTICS[axis.parameter](beam.optics, kept, value))
