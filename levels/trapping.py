@@ -11,7 +11,6 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 from scipy.constants import g as STANDARD_GRAVITY
-from scipy.optimize import brentq
 
 from levels.constants import KB, M_E_U, MU_B_MHZ_PER_GAUSS, H
 from levels.errors import OutsideValidity
@@ -250,6 +249,8 @@ def _knife(
     neighbours = [(label[0], label[1] + step) for step in (-2, 2) if abs(label[1] + step) <= label[0]]
     if not neighbours:
         return None, "there is no neighbouring sublevel"
+    from scipy.optimize import brentq  # 16 MB that a worker spares until it is asked for a trap
+
     at_start = _energy(constants, label, start)
     field = float(
         brentq(lambda b: _energy(constants, label, b) - at_start - wanted, start, end, xtol=1e-12, rtol=1e-14)
