@@ -22,7 +22,6 @@ find_python() {
 install_into() {  # environment, pinned packages
     "$1/bin/python" -m pip install --quiet --disable-pip-version-check --no-input --no-deps --require-hashes -r "$2" >>"$1.log" 2>&1 || {
         tail -n 20 "$1.log" >&2
-        command -v cc >/dev/null 2>&1 || printf 'There is no C compiler (cc) on the PATH: a package that is built from source needs one.\n' >&2
         fail "the packages of $2 could not be installed: the first start needs a Python package index (pip's own words are above)"
     }
     "$1/bin/python" - "$root" <<'PY'

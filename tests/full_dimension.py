@@ -12,24 +12,50 @@ from typing import Any
 import mpmath
 import numpy as np
 from numpy.typing import NDArray
-from pywigxjpf import pywigxjpf
 
 from levels.constants import G_S, MU_B_MHZ_PER_GAUSS
 from levels.records import Level
 
 Array = NDArray[np.float64]
-pywigxjpf.wig_table_init(2 * 60, 6)
-pywigxjpf.wig_temp_init(2 * 60)
 
 
-def wig3jj(*places: int) -> float:
-    """The 3j symbol of doubled arguments by an independent library."""
-    return float(pywigxjpf.wig3jj(*places))
+def wig3jj(j1: int, j2: int, j3: int, m1: int, m2: int, m3: int) -> float:
+    """The 3j symbol of doubled arguments, from the Clebsch-Gordan coefficients of an independent library."""
+    couples = (j1 + j2 + j3) % 2 == 0 and abs(j1 - j2) <= j3 <= j1 + j2
+    if not couples or m1 + m2 + m3 or any(abs(m) > j for j, m in ((j1, m1), (j2, m2), (j3, m3))):
+        return 0.0
+    coefficient = _clebsch(j1 / 2, j2 / 2, j3 / 2, m1 / 2, m2 / 2, -m3 / 2)
+    return float((-1) ** ((j1 - j2 - m3) // 2) / np.sqrt(j3 + 1) * coefficient)
 
 
-def wig6jj(*places: int) -> float:
-    """The 6j symbol of doubled arguments by an independent library."""
-    return float(pywigxjpf.wig6jj(*places))
+@lru_cache(maxsize=65536)
+def _clebsch(*places: float) -> float:
+    from tests.levels.quantum_library import qutip
+
+    return float(qutip.clebsch(*places))
+
+
+@lru_cache(maxsize=4096)
+def _signed_3j(j1: int, j2: int, j3: int, turned: tuple[int, int, int]) -> Array:
+    """(j1 j2 j3; s1 m1, s2 m2, s3 m3) for every m1, m2, m3 from the lowest, with the signs s."""
+    ms = [range(-j, j + 1, 2) for j in (j1, j2, j3)]
+    table = np.zeros([j + 1 for j in (j1, j2, j3)])
+    for a, m1 in enumerate(ms[0]):
+        for b, m2 in enumerate(ms[1]):
+            m3 = -(turned[0] * m1 + turned[1] * m2) * turned[2]
+            if abs(m3) <= j3 and (j3 - m3) % 2 == 0:
+                table[a, b, (j3 + m3) // 2] = wig3jj(j1, j2, j3, turned[0] * m1, turned[1] * m2, turned[2] * m3)
+    return table
+
+
+def wig6jj(a: int, b: int, c: int, d: int, e: int, f: int) -> float:
+    """The 6j symbol of doubled arguments as its defining sum over four 3j symbols. Edmonds (6.2.3)."""
+    triads = ((a, b, c), (a, e, f), (d, b, f), (d, e, c))
+    if any(sum(t) % 2 or not abs(t[0] - t[1]) <= t[2] <= t[0] + t[1] for t in triads):
+        return 0.0
+    phases = [(-1.0) ** np.arange(j, -1, -1) for j in (a, b, c, d, e, f)]  # (-1)^(j - m), m from the lowest
+    four = [_signed_3j(*t, s) for t, s in zip(triads, ((-1, -1, -1), (1, -1, 1), (1, 1, -1), (-1, 1, 1)), strict=True)]
+    return float(np.einsum("abc,aef,dbf,dec,a,b,c,d,e,f->", *four, *phases, optimize=True))
 
 
 @lru_cache(maxsize=256)
