@@ -17,13 +17,21 @@ from service.routes import (
     book,
     catalogue,
     components,
+    cooling,
     field,
+    formula,
     insensitive,
+    lightshift,
+    magic,
+    pairs,
+    polarisability,
+    multiplet,
     search,
     shift,
     strengths,
     sublevels,
     sweep,
+    trap,
 )
 
 Answer = TypeVar("Answer", bound=BaseModel)
@@ -108,6 +116,50 @@ class Client:
     def field(self, atom: str, **asked: Any) -> field.FieldAnswered:
         """The field of a splitting: `level`, `lower`, `upper`, `splitting`, `uncertainty`, `max_field`."""
         return self._get(f"{_atom(atom)}/field", asked, field.FieldAnswered)
+
+    def crossings(self, atom: str, **asked: Any) -> multiplet.CrossingsAnswered:
+        """Level crossings of a term: `level`, `max_field`, `max_dm`."""
+        return self._get(f"{_atom(atom)}/crossings", asked, multiplet.CrossingsAnswered)
+
+    def multiplet(self, atom: str, **asked: Any) -> multiplet.MultipletAnswered:
+        """A whole fine-structure term: `level`, `field`."""
+        return self._get(f"{_atom(atom)}/multiplet", asked, multiplet.MultipletAnswered)
+
+    def force(self, atom: str, **asked: Any) -> cooling.ForceAnswered:
+        """Scattering rate and force: `line`, `against`, `start`, `stop`, `points`."""
+        return self._get(f"{_atom(atom)}/force", asked, cooling.ForceAnswered)
+
+    def slower(self, atom: str, **asked: Any) -> cooling.SlowerAnswered:
+        """A slower's field: `line`, `initial_speed`, `final_speed`, `detuning`."""
+        return self._get(f"{_atom(atom)}/slower", asked, cooling.SlowerAnswered)
+
+    def cooling(self, atom: str, **asked: Any) -> cooling.CoolingAnswered:
+        """Cooling figures of a line: `line`, `detuning`, `intensity`, `gradient` and more."""
+        return self._get(f"{_atom(atom)}/cooling", asked, cooling.CoolingAnswered)
+
+    def trap(self, atom: str, **asked: Any) -> trap.TrapAnswered:
+        """Magnetic trapping: `level`, `bottom`, `max_field`, `depth`."""
+        return self._get(f"{_atom(atom)}/trap", asked, trap.TrapAnswered)
+
+    def formula(self, atom: str, **asked: Any) -> formula.FormulaAnswered:
+        """A formula of the field: `level` and `sublevel`, or `line`, `lower` and `upper`; `**{"as": "c"}`."""
+        return self._get(f"{_atom(atom)}/formula", asked, formula.FormulaAnswered)
+
+    def lightshift(self, atom: str, **asked: Any) -> lightshift.LightshiftAnswered:
+        """What a light does to every sublevel: `level`, `wavelength`, `polarisation`, `field`, `power`, `waist`."""
+        return self._get(f"{_atom(atom)}/lightshift", asked, lightshift.LightshiftAnswered)
+
+    def polarisability(self, atom: str, **asked: Any) -> polarisability.PolarisabilityAnswered:
+        """A polarisability against wavelength: `level`, `F`, `start`, `stop`, `points`."""
+        return self._get(f"{_atom(atom)}/polarisability", asked, polarisability.PolarisabilityAnswered)
+
+    def magic(self, atom: str, **asked: Any) -> magic.MagicAnswered:
+        """Magic conditions and tune-outs: `solve`, `level`, `lower`, `upper_level`, `upper` and what is held."""
+        return self._get(f"{_atom(atom)}/magic", asked, magic.MagicAnswered)
+
+    def pairs(self, atom: str, **asked: Any) -> pairs.PairsAnswered:
+        """Ranked pairs for clocks and qubits: `level`, `upper_level`, `max_field`, `wavelength`."""
+        return self._get(f"{_atom(atom)}/pairs", asked, pairs.PairsAnswered)
 
     def lande(self, **asked: Any) -> angular.LandeAnswered:
         """Lande factors: `J`, `L`, `S`, `I`, `F`."""

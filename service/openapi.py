@@ -18,7 +18,17 @@ TAGS = (
         "description": "What the catalogue holds: atoms, levels, lines and where each value comes from.",
     },
     {"name": "field", "description": "What a level or a line does in a magnetic field."},
+    {
+        "name": "scheme",
+        "description": "Beams and a field checked as a whole: polarisations, populations, dark states, what to change.",
+    },
     {"name": "plan", "description": "Lock points, leaks and repumpers, and the settings of a frequency plan."},
+    {"name": "motion", "description": "What light and field do to the motion of an atom: cooling and magnetic traps."},
+    {
+        "name": "light",
+        "description": "Light shifts, polarisabilities, magic conditions and pairs for clocks. The powers of traps are "
+        "dangerous to eyes and skin, also where the light is invisible: follow your laser safety officer.",
+    },
     {"name": "algebra", "description": "Exact angular-momentum algebra."},
     {"name": "server", "description": "The server itself."},
 )

@@ -18,8 +18,9 @@ from levels.notation import (
     parse_sublevel,
     shown,
 )
-from levels.quantity import parse_quantity_input
+from levels.quantity import convert, parse_quantity_input
 from levels.sublevels import LARGEST_FIELD_GAUSS
+from levels.units import CANONICAL
 
 Name = Annotated[str, Field(min_length=1, max_length=LONGEST_NAME)]
 
@@ -36,14 +37,15 @@ def _plus(text: str) -> str:
 
 
 def _reader(dimension: str, unit: str, low: float, high: float) -> BeforeValidator:
-    """Reads a number with an optional unit, between two bounds in its canonical unit."""
+    """Reads a number with an optional unit, between two bounds, into one unit of its dimension."""
     allowed = f"from {low:.12g} to {high:.12g} {unit}"
 
     def read(given: Any) -> float:
         if isinstance(given, str) and given.isascii() and given.replace(".", "", 1).isdigit() and len(given) < 25:
             value = float(given)  # a plain number, as programs send it, need not be taken apart
         else:
-            value = parse_quantity_input(_plus(_text(given, dimension, allowed)), dimension, unit)
+            canonical = parse_quantity_input(_plus(_text(given, dimension, allowed)), dimension, unit)
+            value = canonical if unit == CANONICAL[dimension] else convert(canonical, CANONICAL[dimension], unit)
         if not low <= value <= high:
             raise OutsideValidity(dimension, shown(str(given)), allowed)
         return value
@@ -54,7 +56,7 @@ def _reader(dimension: str, unit: str, low: float, high: float) -> BeforeValidat
 HALF = "[+-]?[0-9]{1,3}(/2|\\.[05])?"
 NUMBER_WITH_UNIT = {
     "type": "string",
-    "pattern": "^[+-]?([0-9]+\\.?[0-9]*|\\.[0-9]+)([eE][+-]?[0-9]{1,3})? ?[A-Za-z]*$",
+    "pattern": "^[+-]?([0-9]+\\.?[0-9]*|\\.[0-9]+)([eE][+-]?[0-9]{1,3})?( ?[A-Za-z]+(/[A-Za-z]+[0-9]?)?)?$",
 }
 NUMBER_OR_TEXT = WithJsonSchema({"anyOf": [{"type": "number"}, NUMBER_WITH_UNIT]}, mode="validation")
 
@@ -66,11 +68,18 @@ def _number_schema(low: float, high: float) -> WithJsonSchema:
 
 FIELD = (-LARGEST_FIELD_GAUSS, LARGEST_FIELD_GAUSS)
 UP_TO_FIELD = (1e-6, LARGEST_FIELD_GAUSS)
-ANY_MHZ, SPREAD_MHZ = (-1e9, 1e9), (0.0, 1e9)
+ANY_MHZ, SPREAD_MHZ, TOLERANCE_MHZ = (-1e9, 1e9), (0.0, 1e9), (1e-9, 1e6)
+INTENSITY, SPEED, GRADIENT, LENGTH, DEPTH = (1e-12, 1e12), (-1e6, 1e6), (1e-6, 1e6), (1e-6, 1e6), (1e-6, 1e9)
 FieldGauss = Annotated[float, _reader("field", "G", *FIELD), _number_schema(*FIELD)]
 LargestField = Annotated[float, _reader("field", "G", *UP_TO_FIELD), _number_schema(*UP_TO_FIELD)]
 SplittingMhz = Annotated[float, _reader("frequency", "MHz", *ANY_MHZ), _number_schema(*ANY_MHZ)]
 SpreadMhz = Annotated[float, _reader("frequency", "MHz", *SPREAD_MHZ), _number_schema(*SPREAD_MHZ)]
+ToleranceMhz = Annotated[float, _reader("frequency", "MHz", *TOLERANCE_MHZ), _number_schema(*TOLERANCE_MHZ)]
+IntensityMwPerCm2 = Annotated[float, _reader("intensity", "mW/cm2", *INTENSITY), _number_schema(*INTENSITY)]
+VelocityMPerS = Annotated[float, _reader("velocity", "m/s", *SPEED), _number_schema(*SPEED)]
+GradientGaussPerCm = Annotated[float, _reader("gradient", "G/cm", *GRADIENT), _number_schema(*GRADIENT)]
+LengthCm = Annotated[float, _reader("length", "cm", *LENGTH), _number_schema(*LENGTH)]
+DepthMicrokelvin = Annotated[float, _reader("temperature", "uK", *DEPTH), _number_schema(*DEPTH)]
 
 
 _parse_sublevel = lru_cache(4096)(parse_sublevel)
