@@ -25,6 +25,8 @@ from levels.magicangles import ellipticities
 from levels.notation import format_polarisation
 from levels.partners import Partners
 from levels.records import Level, Line
+from levels.response import doubt_of_difference
+from levels.sensitivity import ENERGY, QUADRATIC
 from levels.setting import Setting
 from levels.sublevels import as_fields, constants_of, labels_of, solve_block
 
@@ -61,7 +63,10 @@ class Drive:
 
 @dataclass(frozen=True, slots=True)
 class Pair:
-    """One candidate; labels are (2F, 2m). Light figures are None without a light, or where the trap does not shift."""
+    """One candidate; labels are (2F, 2m). Light figures are None without a light, or where the trap does not shift.
+
+    Uncertainties are None where not known.
+    """
 
     lower: Label
     upper: Label
@@ -70,9 +75,12 @@ class Pair:
     difference_mhz: float
     slope_mhz_per_gauss: float
     quadratic_hz_per_gauss2: float
+    difference_uncertainty_mhz: float | None
+    quadratic_uncertainty_hz_per_gauss2: float | None
     drive: Drive
     field_noise_hz: float
     light_ratio: float | None
+    light_ratio_uncertainty: float | None
     light_noise_hz: float | None
     magic_ellipticity_deg: float | None
     figure_hz: float
@@ -135,25 +143,32 @@ def _in_field(asked: Asked, candidate: Candidate, noise: Noise) -> Pair:
     slope = 0.0 if is_point else abs(at.slope_mhz_per_gauss) * 1e6
     moved = slope * noise.field_gauss + abs(at.quadratic_hz_per_gauss2) * noise.field_gauss**2
     numbers = at.difference_mhz, at.slope_mhz_per_gauss, at.quadratic_hz_per_gauss2
-    return Pair(low, up, field, is_point, *numbers, Drive("none"), moved, None, None, None, moved)
+    energy, quadratic = (_known(at.spread.uncertainty[row, 0, 0]) for row in (ENERGY, QUADRATIC))
+    nothing = None, None, None, None
+    return Pair(low, up, field, is_point, *numbers, energy, quadratic, Drive("none"), moved, *nothing, moved)
+
+
+def _known(uncertainty: float) -> float | None:
+    return None if np.isnan(uncertainty) else float(uncertainty)
 
 
 def _in_light(asked: Asked, pair: Pair, setting: Setting, noise: Noise) -> Pair:
     """Add what the light does to a pair, and the ellipticity at which it would do nothing."""
     lower, upper = Side(asked.lower, pair.lower), Side(asked.upper, pair.upper)
     here = replace(setting, field_gauss=pair.field_gauss)
-    one, two = (
-        here.fractions @ side.at(pair.field_gauss).by_drive(here.frequency_mhz)[:, 0] for side in (lower, upper)
-    )
+    answers = lower.at(pair.field_gauss), upper.at(pair.field_gauss)
+    one, two = (here.fractions @ answer.by_drive(here.frequency_mhz)[:, 0] for answer in answers)
     magic = ellipticities(lower, upper, here).solutions
     best = min(magic, key=lambda found: abs(found.value - setting.ellipticity_deg), default=None)
     if one == 0:
         return replace(pair, magic_ellipticity_deg=None if best is None else best.value)
     ratio = float(two / one) - 1
+    doubt = doubt_of_difference(answers[1], answers[0], np.array([here.frequency_mhz]), here.fractions)
     moved = abs(ratio) * noise.depth_mhz * 1e6 * noise.intensity
     return replace(
         pair,
         light_ratio=ratio,
+        light_ratio_uncertainty=_known(abs(doubt.uncertainty[0] / one)),
         light_noise_hz=moved,
         magic_ellipticity_deg=None if best is None else best.value,
         figure_hz=float(np.hypot(pair.field_noise_hz, moved)),
