@@ -17,6 +17,7 @@ from levels import audit_sources as sources
 from levels import audit_spectrum as spectrum
 from levels import audit_structure as structure
 from levels.audit_labels import label_gaps
+from levels.audit_nuclei import one_nucleus
 from levels.audit_structure import Broken, Species
 from levels.audit_trends import smooth_trends
 from levels.catalogue import DATA, Catalogue, load
@@ -72,6 +73,7 @@ SPECIES_RULES: dict[str, Callable[[Species], Broken]] = {
 }
 VALUE_RULES = {"uncertainty": sources.uncertainty, "disagreement": sources.disagreement}
 BOOK_RULES: dict[str, Callable[[Catalogue], Broken]] = {
+    "one nucleus": one_nucleus,
     "known sources": sources.known_sources,
     "used references": sources.used_references,
     "reference form": sources.reference_form,

@@ -7,6 +7,7 @@ from pathlib import Path
 import pytest
 
 from levels.audit import RULES, audit, audit_overlay, main
+from levels.audit_nuclei import one_nucleus
 from levels.audit_structure import Species
 from levels.audit_trends import TRENDS, smooth_trends
 from levels.audit_values import values_of
@@ -191,9 +192,21 @@ def test_smooth_trends_along_a_column() -> None:
     assert len({trend.name for trend in TRENDS}) == len(TRENDS)
 
 
+def test_the_ion_shares_its_nucleus_with_the_atom(tmp_path: Path) -> None:
+    """A mass that the file of the ion gives otherwise is found."""
+    atom = (FICTIONAL / "Zz.toml").read_text()
+    ion = atom.replace("charge = 0", "charge = 1")
+    (tmp_path / "Zz.toml").write_text(atom)
+    (tmp_path / "Zz+.toml").write_text(ion)
+    assert list(one_nucleus(load([tmp_path]))) == []
+    fact = next(line for line in ion.splitlines() if line.startswith("mass = "))
+    (tmp_path / "Zz+.toml").write_text(ion.replace(fact, fact.replace('value = "', 'value = "1'), 1))
+    assert [where.rpartition(".")[2] for where, _ in one_nucleus(load([tmp_path]))] == ["mass"]
+
+
 def test_every_rule_has_a_broken_fixture() -> None:
     """No rule joins the table without a test that makes it fire."""
-    assert {*BREAKS, *REFERENCE_BREAKS, "shift loops", "king", "smooth trends"} == set(RULES)
+    assert {*BREAKS, *REFERENCE_BREAKS, "shift loops", "king", "smooth trends", "one nucleus"} == set(RULES)
 
 
 def test_an_exception_answers_its_finding_and_is_counted(tmp_path: Path) -> None:
