@@ -9,7 +9,7 @@ from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 
 from levels.errors import OutsideValidity, UnknownName
-from levels.positions import Place, difference_spread, own_spread
+from levels.positions import Place, difference_spread, own_spread, slope_spread
 from levels.quantity import combine
 
 FEATURE, FREQUENCY, COMB, BEAT = "feature", "frequency", "comb", "beat"
@@ -24,6 +24,7 @@ class Point:
     frequency_mhz: float
     uncertainty_mhz: float | None
     slope_mhz_per_gauss: float | None = None
+    slope_uncertainty: float | None = None
     place: Place | None = None
 
 
@@ -48,9 +49,11 @@ class Lock:
     partner: str = ""
 
 
-def point_of_place(place: Place, detuning_mhz: float = 0.0) -> Point:
-    """Make a point of a place on a line."""
-    return Point(place.frequency_mhz + detuning_mhz, own_spread(place), place.slope_mhz_per_gauss, place)
+def point_of_place(place: Place, detuning_mhz: float = 0.0, by_sublevel: bool = False) -> Point:
+    """Make a point of a place on a line; only that of a pair of sublevels has a slope."""
+    frequency, spread = place.frequency_mhz + detuning_mhz, own_spread(place)
+    slope = place.slope_mhz_per_gauss if by_sublevel else None
+    return Point(frequency, spread, slope, slope_spread(place) if by_sublevel else None, place)
 
 
 def check_point(parameter: str, frequency_mhz: float) -> float:

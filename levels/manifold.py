@@ -49,9 +49,9 @@ def format_label(label: Label) -> str:
     return format_half(twice_F) if twice_m is None else format_sublevel(twice_F, twice_m)
 
 
-def manifold(level: Level, field_gauss: float = 0.0) -> Manifold:
-    """Solve a level: hyperfine levels for a field of exactly zero, sublevels otherwise."""
-    return _hyperfine_levels(level) if field_gauss == 0 else _sublevels(level, field_gauss)
+def manifold(level: Level, field_gauss: float = 0.0, by_sublevel: bool = False) -> Manifold:
+    """Solve a level: hyperfine levels for a field of exactly zero unless sublevels are asked for, else sublevels."""
+    return _sublevels(level, field_gauss) if field_gauss or by_sublevel else _hyperfine_levels(level)
 
 
 def _hyperfine_levels(level: Level) -> Manifold:

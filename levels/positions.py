@@ -17,7 +17,7 @@ from levels.manifold import Label, Manifold, manifold
 from levels.notation import FeatureName
 from levels.quantity import combine
 from levels.records import Line
-from levels.sensitivity import ENERGY, Movement, Terms, add_terms, spread, terms_of
+from levels.sensitivity import ENERGY, SLOPE, Movement, Terms, add_terms, spread, terms_of
 
 Indices = NDArray[np.int64]
 
@@ -62,7 +62,9 @@ def averaged(states: Manifold, members: Indices) -> tuple[NDArray[np.float64], N
 
 def place(line: Line, lower: Sequence[Label], upper: Sequence[Label], field_gauss: float = 0.0) -> Place:
     """Locate the mean of the components between lower and upper states: one pair, or the two of a crossover."""
-    return place_between(line, manifold(line.lower, field_gauss), manifold(line.upper, field_gauss), lower, upper)
+    by_sublevel = lower[0][1] is not None
+    below, above = (manifold(level, field_gauss, by_sublevel) for level in (line.lower, line.upper))
+    return place_between(line, below, above, lower, upper)
 
 
 def place_between(
@@ -92,6 +94,15 @@ def energy_spread(terms: Sequence[Terms]) -> tuple[float | None, tuple[str, ...]
     found = spread(reduce(add_terms, terms))
     value = float(found.uncertainty[ENERGY, 0, 0])
     return (None if np.isnan(value) else value), found.excludes
+
+
+def slope_spread(one: Place) -> float | None:
+    """Return the standard uncertainty of a place's slope in MHz/G; None where not known."""
+    terms = one.terms()
+    if not terms:
+        return None
+    value = float(spread(reduce(add_terms, terms)).uncertainty[SLOPE, 0, 0])
+    return None if np.isnan(value) else value
 
 
 def _centroid_spread(line: Line) -> float | None:

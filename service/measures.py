@@ -30,3 +30,5 @@ def _measure(dimension: str, unit: str, low: float, high: float) -> BeforeValida
 Kelvin = Annotated[float, _measure("temperature", "K", 1e-9, 1e5), NUMBER_OR_TEXT]
 Megahertz = Annotated[float, _measure("frequency", "MHz", -1e7, 1e7), NUMBER_OR_TEXT]
 Seconds = Annotated[float, _measure("time", "s", 1e-9, 1e9), NUMBER_OR_TEXT]
+PositiveMhz = Annotated[float, _measure("frequency", "MHz", 0.0, 1e7), NUMBER_OR_TEXT]
+LightMhz = Annotated[float, _measure("frequency", "MHz", 1e5, 1e10), NUMBER_OR_TEXT]
