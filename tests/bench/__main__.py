@@ -12,9 +12,17 @@ from service.cli import FEW_THREADS
 for name in FEW_THREADS:
     os.environ.setdefault(name, "1")
 
-from tests.bench import algebra, requests, spectra, start, startup, steady  # noqa: E402 - numpy reads the environment when imported
+from tests.bench import algebra, requests, spectra, start, startup, steady, strongfield  # noqa: E402 - numpy reads the environment when imported
 
-BENCHMARKS = {"a": requests.run, "b": spectra.run, "c": algebra.run, "d": start.run, "e": steady.run, "f": startup.run}
+BENCHMARKS = {
+    "a": requests.run,
+    "b": spectra.run,
+    "c": algebra.run,
+    "d": start.run,
+    "e": steady.run,
+    "f": startup.run,
+    "s": strongfield.run,
+}
 
 for letter in sys.argv[1:] or BENCHMARKS:
     BENCHMARKS[letter]()
