@@ -115,7 +115,5 @@ def slowest_us(matrix: Array, start: Array, observed: NDArray[np.int64]) -> floa
         return None
     weight = np.abs(shares) * np.abs(vectors[observed]).max(axis=0)
     moving = values.real < -1e-12 * np.abs(values).max()
-    if not moving.any():
-        return None
-    notable = moving & (weight > 1e-3 * weight[moving].max())
-    return float(-1.0 / values.real[notable].max())
+    notable = moving & (weight > 1e-3 * weight[moving].max(initial=0.0))
+    return float(-1.0 / values.real[notable].max()) if notable.any() else None

@@ -1,87 +1,62 @@
-"""Absorbing Markov chains by state reduction without subtractions, many chains at once.
+"""Long-time populations of rate equations without subtraction, so that rates of any ratio keep their accuracy.
 
-State 0 is where every walk starts. The states are eliminated from the last to the first; no two numbers are ever
-subtracted, so that a chain which loses one walk in 1e12 still gives all its digits. Grassmann, Taksar, Heyman, Oper.
-Res. 33, 1107 (1985). A state from which the start cannot be reached again counts as lost: `trapped` finds them.
+States are removed one after another; what flowed through the removed state flows on in proportion to its outgoing rates
+(Grassmann, Taksar and Heyman, Operations Research 33, 1107 (1985)). Only additions, products and quotients of positive
+numbers occur: a level that decays once in a year beside one that decays in nanoseconds costs no digits.
 """
-
-from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import NDArray
+from scipy.sparse import csr_matrix
+from scipy.sparse.csgraph import connected_components
 
 Array = NDArray[np.float64]
-NEVER = 1e-30  # stands for a loss that does not exist, so that endless walks stay finite numbers
-ENDLESS = 1e25  # more visits than this are called endless
 
 
-@dataclass(frozen=True, slots=True, eq=False)
-class Reduced:
-    """Chains with states n-1 .. 1 eliminated: `moves` (k, n, n), the exit sums of each state (k, n)."""
+def long_time(moves: Array, initial: Array) -> tuple[Array, bool]:
+    """Return the populations after a long time, and whether the start does not matter.
 
-    moves: Array
-    exits: Array
-
-
-def trapped(moves: Array) -> NDArray[np.bool_]:
-    """Find the states, shape (k, n), from which no path leads back to state 0."""
-    links = (moves > 0).astype(np.float64)
-    home = np.zeros(moves.shape[:2])
-    home[:, 0] = 1.0
-    while True:
-        wider = np.minimum(home + (links @ home[..., None])[..., 0], 1.0)
-        wider = np.where(wider > 0, 1.0, 0.0)
-        if np.array_equal(wider, home):
-            lost: NDArray[np.bool_] = home == 0
-            return lost
-        home = wider
-
-
-def closed_off(moves: Array, loss: Array) -> tuple[Array, Array]:
-    """Turn trapped states into losses: what leads to them leaves the chain."""
-    lost = trapped(moves)
-    kept = np.where(lost[:, None, :] | lost[:, :, None], 0.0, moves)
-    gone = loss + (moves * lost[:, None, :]).sum(axis=-1)
-    return kept, np.where(lost, 1.0, gone)
-
-
-def reduce(moves: Array, loss: Array) -> Reduced:
-    """Eliminate all states but the start; `moves` (k, n, n) and `loss` (k, n) are probabilities or rates.
-
-    Moves from a state to itself are ignored: they only repeat a visit.
+    `moves[end, start]` are rates, its diagonal is not read. Atoms end in the closed classes that they can reach; within
+    each class the populations are its stationary ones.
     """
-    A, out = moves.copy(), loss.copy()
-    n = A.shape[-1]
-    exits = np.empty(out.shape)
-    for s in range(n - 1, 0, -1):
-        total = A[:, s, :s].sum(axis=-1) + out[:, s]
-        exits[:, s] = total
-        share = A[:, :s, s] / total[:, None]
-        A[:, :s, :s] += share[:, :, None] * A[:, s, None, :s]
-        out[:, :s] += share * out[:, s, None]
-    exits[:, 0] = np.maximum(out[:, 0], NEVER)
-    return Reduced(A, exits)
+    rates = np.maximum(moves, 0.0)
+    np.fill_diagonal(rates, 0.0)
+    _, part = connected_components(csr_matrix(rates.T > 0), directed=True, connection="strong")
+    leaving = [bool(np.any(rates[np.ix_(part != k, part == k)] > 0)) for k in range(int(part.max()) + 1)]
+    closed = [np.flatnonzero(part == k) for k, leaves in enumerate(leaving) if not leaves]
+    arriving = _absorbed(rates, initial, np.isin(part, np.flatnonzero(leaving)))
+    result = np.zeros(initial.size)
+    for inside in closed:
+        result[inside] = arriving[inside].sum() * stationary(rates[np.ix_(inside, inside)])
+    return result, len(closed) == 1
 
 
-def visits(chain: Reduced) -> Array:
-    """Compute the expected visits to each state (with rates: the time spent there) before loss, shape (k, n)."""
-    n = chain.exits.shape[-1]
-    found = np.empty(chain.exits.shape)
-    found[:, 0] = 1.0 / chain.exits[:, 0]
-    for s in range(1, n):
-        found[:, s] = (found[:, :s] * chain.moves[:, :s, s]).sum(axis=-1) / chain.exits[:, s]
-    return found
+def stationary(rates: Array) -> Array:
+    """Return the stationary populations, sum 1, of states that all reach each other."""
+    left = rates.copy()
+    size = left.shape[0]
+    flow = np.zeros(size)
+    for k in range(size - 1, 0, -1):
+        flow[k] = left[:k, k].sum()
+        left[:k, :k] += np.outer(left[:k, k] / flow[k], left[k, :k])
+    populations = np.zeros(size)
+    populations[0] = 1.0
+    for k in range(1, size):
+        populations[k] = left[k, :k] @ populations[:k] / flow[k]
+    total: Array = populations / populations.sum()
+    return total
 
 
-def values(chain: Reduced, reward: Array) -> Array:
-    """Compute the expected sum of rewards per visit (with rates: per unit of time) from each state on, shape (k, n)."""
-    n = chain.exits.shape[-1]
-    ahead = np.broadcast_to(reward, chain.exits.shape).copy()
-    for s in range(n - 1, 0, -1):
-        ahead[:, :s] += chain.moves[:, :s, s] / chain.exits[:, s, None] * ahead[:, s, None]
-    found = np.empty(chain.exits.shape)
-    found[:, 0] = ahead[:, 0] / chain.exits[:, 0]
-    for s in range(1, n):
-        onward = (chain.moves[:, s, :s] * found[:, :s]).sum(axis=-1)
-        found[:, s] = (ahead[:, s] + onward) / chain.exits[:, s]
-    return found
+def _absorbed(rates: Array, initial: Array, transient: NDArray[np.bool_]) -> Array:
+    """Send the start of all transient states on to the states where it ends."""
+    left, populations = rates.copy(), initial.copy()
+    alive = np.ones(initial.size, dtype=np.bool_)
+    for k in np.flatnonzero(transient):
+        alive[k] = False
+        ways = np.where(alive, left[:, k], 0.0)
+        ways /= ways.sum()
+        populations += ways * populations[k]
+        populations[k] = 0.0
+        left += np.outer(ways, np.where(alive, left[k], 0.0))
+        np.fill_diagonal(left, 0.0)
+    return populations

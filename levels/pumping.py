@@ -4,7 +4,7 @@ Optical Bloch equations are used wherever one rotating frame holds all lasers an
 equations otherwise, with the reason. The outcome says which, and warns where the two would differ.
 """
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from functools import cached_property
 
 import numpy as np
@@ -148,9 +148,12 @@ def solve(light: Light, initial: ArrayLike | None = None) -> Outcome:
     by_rates, unique = steady_populations(light.rates, start)
     populations = by_rates
     if light.model == "bloch":
-        state = steady_state(light.bloch, start)
-        rho, unique, populations = state.rho, state.unique, state.populations
-    populations = np.maximum(populations, 0.0)
+        try:
+            state = steady_state(light.bloch, start)
+            rho, unique, populations = state.rho, state.unique, state.populations
+        except OutsideValidity as limit:
+            light = replace(light, model="rate", reason=str(limit))
+    populations = np.maximum(populations, 0.0) / np.maximum(populations, 0.0).sum()  # rounding may leave -1e-17
     by_line = _photons_by_line(structure, populations * 1e6)
     total = float(sum(by_line.values()))
     from_rates = float(sum(_photons_by_line(structure, by_rates * 1e6).values())) if rho is not None else None
@@ -232,7 +235,9 @@ def pump(light: Light, target: int | None = None, initial: ArrayLike | None = No
     photons = _photons_by_line(structure, integral)
     recoils, heating = _heating(structure, photons)
     purity = float(outcome.populations[at])
-    return Pumping(outcome, at, purity, mean, _slowest(light, start), float(sum(photons.values())), recoils, heating)
+    return Pumping(
+        outcome, at, purity, mean, _slowest(outcome.light, start), float(sum(photons.values())), recoils, heating
+    )
 
 
 def _heating(structure: Structure, photons: dict[str, float]) -> tuple[float, float | None]:

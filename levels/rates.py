@@ -13,7 +13,8 @@ import numpy as np
 from numpy.typing import NDArray
 
 from levels.driven import Drive
-from levels.steady import null_spaces, solve_with_trace
+from levels.markov import long_time
+from levels.steady import solve_with_trace
 
 Array = NDArray[np.float64]
 
@@ -74,10 +75,4 @@ def steady_populations(rates: Rates, initial: Array) -> tuple[Array, bool]:
 
     Where there are several, the long-time limit of the initial populations is returned.
     """
-    matrix = closed_rates(rates).matrix
-    found = solve_populations(matrix)
-    if found is not None:
-        return found, True
-    right, left = null_spaces(matrix)
-    limit: Array = right @ np.linalg.solve(left.T @ right, left.T @ initial)
-    return limit, False
+    return long_time(closed_rates(rates).matrix, initial)

@@ -18,7 +18,12 @@ from levels.elimination import Reduced, equations, optical_part, with_optical
 from levels.errors import OutsideValidity
 
 DENSE_UNKNOWNS = 1500  # up to here LAPACK beats sparse LU, whose factors fill up
-SINGULAR = 1e-15  # reciprocal condition below which the equations are taken to have several solutions
+SINGULAR = 1e-16  # reciprocal condition below which the equations are taken to have several solutions
+REFINED = 1e-9
+SMALL_PIVOT = 1e-5  # of rows whose elements add up to 1
+REFINEMENTS = 3
+SLOWEST = 3e-10  # per us: manifolds that exchange atoms more slowly than once in an hour are taken as separate
+LARGEST_DEGENERATE = 3000
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -66,8 +71,11 @@ def steady_state(bloch: Bloch, initial: Array) -> Steady:
     unique = values is not None
     if values is None:
         right, left = null_spaces(matrix_of(reduced.rows, reduced.columns, reduced.values, reduced.size))
+        unique = right.shape[1] == 1
         overlap = overlaps(reduced, left, right)
         values = right @ np.linalg.solve(overlap, left.T @ to_real(np.diag(initial + 0j), reduced.table))
+        diagonal = np.diag(reduced.table)
+        values = values / float(values[diagonal[diagonal >= 0]].sum())  # rounding, where exchange is slow but not nil
     rho = with_optical(reduced, values)
     return Steady(rho, unique, float(np.diag(rho).real @ bloch.lost), reduced.size)
 
@@ -94,13 +102,38 @@ def solve_with_trace(
     values = np.concatenate([values[keep], np.full(traced.size, scale)])
     if n > DENSE_UNKNOWNS:
         return _solve_sparse(csc_matrix((values, (rows, columns)), shape=(n, n)), right)
-    matrix = matrix_of(rows, columns, values, n)
-    norm = float(np.abs(matrix).sum(axis=0).max())
-    factors, _pivots, solution, info = lapack.dgesv(matrix, right, overwrite_a=True)
-    if info != 0 or lapack.dgecon(factors, norm)[0] < SINGULAR:
+    return solve_dense(rows, columns, values, right)
+
+
+def solve_dense(rows: Indices, columns: Indices, values: Array, right: Array) -> Array | None:
+    """Solve M x = right by LAPACK, M given by triplets; None where it is singular to working precision.
+
+    Rows are scaled to equal size first, so that fast precessions do not hide slow rates. Small pivots call for the
+    condition number, and an ill-conditioned solution is refined with residuals in extended precision.
+    """
+    n = right.size
+    sizes = np.bincount(rows, weights=np.abs(values), minlength=n)
+    scale = 1.0 / np.where(sizes > 0, sizes, 1.0)
+    values, right = values * scale[rows], right * scale
+    factors, pivots, solution, info = lapack.dgesv(matrix_of(rows, columns, values, n), right, overwrite_a=True)
+    if info != 0:
         return None
     result: Array = solution
+    if np.abs(np.diag(factors)).min() < SMALL_PIVOT:
+        condition = lapack.dgecon(factors, 1.0, norm="I")[0]
+        if condition < SINGULAR:
+            return None
+        if condition < REFINED:
+            return _refined(matrix_of(rows, columns, values, n), right, factors, pivots, result)
     return result
+
+
+def _refined(matrix: Array, right: Array, factors: Array, pivots: Indices, solution: Array) -> Array:
+    extended, exact = matrix.astype(np.longdouble), solution.astype(np.longdouble)
+    for _ in range(REFINEMENTS):
+        residual = np.asarray(right - extended @ exact, dtype=np.float64)
+        exact = exact + lapack.dgetrs(factors, pivots, residual)[0]
+    return exact.astype(np.float64)
 
 
 def _solve_sparse(matrix: csc_matrix, right: Array) -> Array | None:
@@ -117,14 +150,50 @@ def _solve_sparse(matrix: csc_matrix, right: Array) -> Array | None:
 
 
 def null_spaces(matrix: Array) -> tuple[Array, Array]:
-    """Return orthonormal bases of the right and left null spaces, as columns."""
-    if matrix.shape[0] > DENSE_UNKNOWNS:
-        raise OutsideValidity("beams", f"{matrix.shape[0]} unknowns", "fewer levels: there are several steady states")
-    left, sizes, right = np.linalg.svd(matrix)
-    null = sizes < 1e2 * SINGULAR * sizes[0]
-    if not null.any():
-        null[-1] = True
-    return right[null].T, left[:, null]
+    """Return bases of the right and left null spaces of a generator, as columns.
+
+    By inverse iteration with a shift of rounding size: a few solutions with one factorisation. Rates below `SLOWEST`
+    count as none.
+    """
+    size = matrix.shape[0]
+    if size > LARGEST_DEGENERATE:
+        raise OutsideValidity("beams", f"{size} unknowns", "fewer levels: there are several steady states")
+    factors, pivots, _info = lapack.dgetrf(_shifted(matrix))
+    width = min(8, size)
+    while True:
+        right = _near_null(matrix, factors, pivots, width, 0)
+        if right.shape[1] < width or width == size:
+            break
+        width = min(2 * width, size)
+    left = _near_null(matrix, factors, pivots, min(right.shape[1] + 2, size), 1)
+    count = min(right.shape[1], left.shape[1])
+    return right[:, :count], left[:, :count]
+
+
+def _shifted(matrix: Array) -> Array:
+    norm = float(np.abs(matrix).sum(axis=0).max())
+    result: Array = matrix - 4e-16 * norm * np.eye(matrix.shape[0])
+    return result
+
+
+def some_solution(matrix: Array, goal: Array) -> Array:
+    """Return one solution of M x = goal for a singular M and a goal in its range; its null part is arbitrary."""
+    solution: Array = lapack.dgesv(_shifted(matrix), goal)[2]
+    return solution
+
+
+def _near_null(matrix: Array, factors: Array, pivots: Indices, width: int, transposed: int) -> Array:
+    """Return the null vectors of M (or its transpose) inside the space that inverse iteration finds, smallest first."""
+    size = matrix.shape[0]
+    space = np.random.default_rng(size).normal(size=(size, width))
+    for _ in range(3):
+        space = np.linalg.qr(lapack.dgetrs(factors, pivots, space, trans=transposed)[0])[0]
+    image = (matrix.T if transposed else matrix) @ space
+    _, sizes, turn = np.linalg.svd(image)
+    order = np.argsort(sizes)
+    limit = max(SLOWEST, 1e-15 * float(np.abs(matrix).sum(axis=0).max()) * np.sqrt(size))
+    chosen: Array = space @ turn[order[sizes[order] < limit] if np.any(sizes < limit) else order[:1]].T
+    return chosen
 
 
 def conserved_optical(reduced: Reduced, left: Array) -> list[Complex]:

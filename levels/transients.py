@@ -5,12 +5,20 @@
 """
 
 import numpy as np
-from scipy.linalg import lapack
 
 from levels.bloch import Array, Bloch, Complex
 from levels.elimination import Reduced, equations, source, with_optical
 from levels.rates import Rates, closed_rates, solve_populations
-from levels.steady import SINGULAR, closed, conserved_optical, matrix_of, null_spaces, overlaps, solve_with_trace
+from levels.steady import (
+    closed,
+    conserved_optical,
+    matrix_of,
+    null_spaces,
+    overlaps,
+    solve_dense,
+    solve_with_trace,
+    some_solution,
+)
 
 
 def settling(bloch: Bloch, initial: Array, final: Complex) -> Array:
@@ -32,7 +40,7 @@ def _without_conserved(reduced: Reduced, goal: Array, change: Complex) -> Array:
     """Solve where several steady states exist: the integral has no share in any conserved quantity."""
     matrix = matrix_of(reduced.rows, reduced.columns, reduced.values, reduced.size)
     right, left = null_spaces(matrix)
-    some = np.asarray(np.linalg.lstsq(matrix, goal, rcond=1e-13)[0], dtype=np.float64)
+    some = some_solution(matrix, goal)
     direct = -reduced.response * change[np.ix_(reduced.upper, reduced.lower)]
     extra = [2 * np.sum(O.conj() * direct).real for O in conserved_optical(reduced, left)]
     held = overlaps(reduced, left, some[:, None])[:, 0] + np.array(extra)
@@ -44,20 +52,10 @@ def residence(bloch: Bloch, initial: Array) -> Array | None:
     """Integrate the populations over time until all atoms are lost, in us; None when some atoms never leave."""
     reduced = equations(bloch)
     goal = source(reduced, -np.diag(initial + 0j))
-    matrix = matrix_of(reduced.rows, reduced.columns, reduced.values, reduced.size)
-    values = _regular(matrix, goal)
+    values = solve_dense(reduced.rows, reduced.columns, reduced.values, goal)
     if values is None:
         return None
     return _populations(reduced, values)
-
-
-def _regular(matrix: Array, goal: Array) -> Array | None:
-    norm = float(np.abs(matrix).sum(axis=0).max())
-    factors, _pivots, values, info = lapack.dgesv(matrix, goal)
-    if info != 0 or lapack.dgecon(factors, norm)[0] < SINGULAR:
-        return None
-    result: Array = values
-    return result
 
 
 def settling_of_rates(rates: Rates, initial: Array, final: Array) -> Array:
@@ -67,10 +65,11 @@ def settling_of_rates(rates: Rates, initial: Array, final: Array) -> Array:
     if found is not None:
         return found
     right, left = null_spaces(matrix)
-    some = np.asarray(np.linalg.lstsq(matrix, final - initial, rcond=1e-13)[0], dtype=np.float64)
+    some = some_solution(matrix, final - initial)
     return some - right @ np.linalg.solve(left.T @ right, left.T @ some)
 
 
 def residence_of_rates(rates: Rates, initial: Array) -> Array | None:
     """The same as `residence` for rate equations."""
-    return _regular(rates.matrix, -initial)
+    rows, columns = np.nonzero(rates.matrix)
+    return solve_dense(rows, columns, rates.matrix[rows, columns], -initial)
