@@ -113,7 +113,7 @@ def _dark(outcome: Outcome, manifolds: tuple[LowerManifold, ...], at: int | None
     fair = FAIR_SHARES / sum(manifold.size for manifold in manifolds)
     change = ""
     for manifold in manifolds:
-        shares = [_held(outcome, state) for state in manifold.dark]
+        shares = [held_in(outcome, state) for state in manifold.dark]
         for state, held in zip(manifold.dark, shares, strict=True):
             if _is_target(outcome, state, at):
                 text = (
@@ -126,7 +126,7 @@ def _dark(outcome: Outcome, manifolds: tuple[LowerManifold, ...], at: int | None
                 yield _dark_finding(manifold, state, held, sum(shares), change)
 
 
-def _held(outcome: Outcome, state: DarkState) -> float:
+def held_in(outcome: Outcome, state: DarkState) -> float:
     """Return the share of the atoms in a dark state, from the density matrix (or populations, without one)."""
     structure = outcome.light.structure
     at = [structure.position(state.level, label) for label in state.labels]

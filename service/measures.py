@@ -18,8 +18,11 @@ def _measure(dimension: str, unit: str, low: float, high: float) -> BeforeValida
     def read(given: Any) -> float:
         if isinstance(given, bool) or not isinstance(given, (str, int, float)):
             raise OutsideValidity(dimension, shown(str(given)), allowed)
-        text = (given if isinstance(given, str) else repr(given)).replace("e ", "e+").replace("E ", "E+")
-        value = convert(parse_quantity_input(text, dimension, unit), CANONICAL[dimension], unit)
+        if isinstance(given, str):
+            text = given.replace("e ", "e+").replace("E ", "E+")
+            value = convert(parse_quantity_input(text, dimension, unit), CANONICAL[dimension], unit)
+        else:
+            value = float(given)  # in the unit already: a journey through another would change its last digit
         if not low <= value <= high:
             raise OutsideValidity(dimension, shown(str(given)), allowed)
         return value
