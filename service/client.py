@@ -19,15 +19,17 @@ from service.routes import (
     components,
     cooling,
     field,
+    force,
     formula,
     insensitive,
     lightshift,
     magic,
+    multiplet,
     pairs,
     polarisability,
-    multiplet,
     search,
     shift,
+    slower,
     strengths,
     sublevels,
     sweep,
@@ -125,13 +127,13 @@ class Client:
         """A whole fine-structure term: `level`, `field`."""
         return self._get(f"{_atom(atom)}/multiplet", asked, multiplet.MultipletAnswered)
 
-    def force(self, atom: str, **asked: Any) -> cooling.ForceAnswered:
+    def force(self, atom: str, **asked: Any) -> force.ForceAnswered:
         """Scattering rate and force: `line`, `against`, `start`, `stop`, `points`."""
-        return self._get(f"{_atom(atom)}/force", asked, cooling.ForceAnswered)
+        return self._get(f"{_atom(atom)}/force", asked, force.ForceAnswered)
 
-    def slower(self, atom: str, **asked: Any) -> cooling.SlowerAnswered:
+    def slower(self, atom: str, **asked: Any) -> slower.SlowerAnswered:
         """A slower's field: `line`, `initial_speed`, `final_speed`, `detuning`."""
-        return self._get(f"{_atom(atom)}/slower", asked, cooling.SlowerAnswered)
+        return self._get(f"{_atom(atom)}/slower", asked, slower.SlowerAnswered)
 
     def cooling(self, atom: str, **asked: Any) -> cooling.CoolingAnswered:
         """Cooling figures of a line: `line`, `detuning`, `intensity`, `gradient` and more."""
