@@ -13,9 +13,10 @@ from collections.abc import Sequence
 from dataclasses import dataclass
 
 import numpy as np
+from numpy.typing import ArrayLike
 
 from levels.errors import OutsideValidity
-from levels.geometry import Complex
+from levels.geometry import Axes, Complex, attainable, best_jones
 
 HANDEDNESS = {"helicity": {"right": 1, "left": -1}, "optics": {"right": -1, "left": 1}}
 WAVES = {"half": 0.5, "quarter": 0.25, "full": 1.0}
@@ -135,3 +136,27 @@ def plates_for(jones: Sequence[complex] | Complex, polariser_deg: float = 0.0) -
     entering = wanted.azimuth_deg + wanted.ellipticity_deg
     half = (entering + polariser_deg) / 2 % 180.0
     return PlateSetting(float(half), wanted.azimuth_deg, wanted)
+
+
+def plates_toward(
+    direction: ArrayLike,
+    axes: Axes,
+    q: int,
+    wanted: float = 1.0,
+    *,
+    polariser_deg: float = 0.0,
+    multipole: str = "E1",
+    reference: ArrayLike | None = None,
+) -> tuple[PlateSetting, float]:
+    """Find the plate angles that bring the fraction of q closest to a wanted one, and the fraction they reach.
+
+    Only the part of the light along the best polarisation drives q, so any fraction from zero to the attainable one is
+    reached by mixing in the orthogonal polarisation, which drives none.
+    """
+    if not 0.0 <= wanted <= 1.0:
+        raise OutsideValidity("purity", wanted, "a fraction from 0 to 1")
+    best = best_jones(direction, axes, q, multipole, reference)
+    largest = attainable(direction, axes, multipole)
+    reached = min(wanted, float(largest[q + largest.size // 2]))
+    share = reached / float(largest[q + largest.size // 2])
+    return plates_for(with_impurity(best, max(0.0, 1.0 - share)), polariser_deg), reached

@@ -1,192 +1,162 @@
-"""A scheme solved over a grid of up to three parameters, point by point and in pieces.
+"""A scheme over a grid of up to three parameters: the points, the changed schemes, and a row of numbers for each.
 
-A point depends on nothing but its place in the grid, so pieces may be solved anywhere and in any order.
+Everything here is plain data and top-level functions, so that points can be solved in any process, in any order: the
+rows of a chunk do not depend on how a scan is cut into chunks.
 """
 
-import time
-from collections.abc import Callable
+import itertools
+from collections.abc import Iterator, Sequence
 from dataclasses import dataclass, replace
-from typing import Any, TypeVar
 
 import numpy as np
+from numpy.typing import NDArray
 
-from levels.beams import Beam, Scheme, with_field
-from levels.cycling import photons_before_leaving
+from levels.beams import LARGEST_INTENSITY, LARGEST_OFFSET_MHZ, Beam, Scheme, with_beam, with_field
 from levels.errors import OutsideValidity
-from levels.geometry import axes_of
-from levels.pumping import Outcome, Pumping, prepare, pump, solve
+from levels.geometry import axes_of, polarisation_vector, transverse_basis
+from levels.jones import ellipse_of, elliptical
+from levels.pumping import prepare, solve
+from levels.purity import tilted, with_impurity
 from levels.records import Level
-from levels.setup import Setup, Share, build, build_at, populations_of, with_beam_setup
 from levels.structure import Label, Structure, structure_of
-from levels.vary import PARAMETERS, Axis, check_axes, varied_beam, varied_field, varied_magnitude
+from levels.sublevels import LARGEST_FIELD_GAUSS
 
-KEPT = 256  # structures and beams held at a time: what one axis makes comes back along the next
-Cell = float | str | None
-Item = TypeVar("Item")
+Array = NDArray[np.float64]
+LARGEST_SCAN = 1_000_000
+MOST_PARAMETERS = 3
 
 
 @dataclass(frozen=True, slots=True)
-class Column:
-    """One number to compute at each point; it is read from the steady `outcome`, the `pumping` or the `cycling`."""
+class Kind:
+    """One thing that can be scanned: its unit, whether it belongs to a beam, its range, what it does."""
 
     name: str
-    needs: str
+    unit: str
+    of_beam: bool
+    low: float
+    high: float
     meaning: str
-    read: Callable[..., Cell]
 
 
-def _fullest(outcome: Outcome) -> int:
-    return int(np.argmax(outcome.populations))
-
-
-def _excited(outcome: Outcome) -> float:
-    structure = outcome.light.structure
-    driven = {structure.index_of(item.beam.line.upper) for item in outcome.light.drive.couplings}
-    return float(outcome.populations[np.isin(structure.level_index, list(driven))].sum())
-
-
-COLUMNS = {
-    row.name: row
-    for row in (
-        Column("scattering_per_s", "outcome", "spontaneous photons per atom", lambda o: o.scattering_per_s),
-        Column("excited", "outcome", "share of the atoms in the upper levels of the beams' lines", _excited),
-        Column("lost_per_s", "outcome", "rate of losing atoms for good", lambda o: o.lost_per_s),
-        Column("fullest", "outcome", "the sublevel with most atoms", lambda o: o.light.structure.name(_fullest(o))),
-        Column("fullest_share", "outcome", "its share of the atoms", lambda o: float(o.populations[_fullest(o)])),
-        Column("unique", "outcome", "1 for one steady state, 0 where the start decides", lambda o: float(o.unique)),
-        Column("purity", "pumping", "share of the atoms that end in the target", lambda p: p.purity),
-        Column("pumping_time_us", "pumping", "mean time of pumping to the target", lambda p: p.mean_time_us),
-        Column("pumping_photons", "pumping", "photons that the pumping costs, per atom", lambda p: p.photons),
-        Column("heating_uK", "pumping", "heating by the pumping", lambda p: p.heating_uk),
-        Column("photons_before_loss", "cycling", "photons before an atom leaves the cycle", lambda c: c.photons),
-        Column("time_before_loss_us", "cycling", "mean time until it leaves", lambda c: c.time_us),
+KINDS = {
+    kind.name: kind
+    for kind in (
+        Kind("field", "G", False, 0.0, LARGEST_FIELD_GAUSS, "magnitude, in the direction of the scheme's field"),
+        Kind("field_angle", "deg", False, -360.0, 360.0, "turns the field from its direction towards x' of its frame"),
+        Kind("detuning", "MHz", True, -LARGEST_OFFSET_MHZ, LARGEST_OFFSET_MHZ, "added to the beam's offset"),
+        Kind("intensity", "mW/cm2", True, 0.0, LARGEST_INTENSITY, "of the beam"),
+        Kind("ellipticity", "deg", True, -45.0, 45.0, "of the beam, its long axis as it was"),
+        Kind("azimuth", "deg", True, -360.0, 360.0, "of the beam's long axis from its first transverse axis"),
+        Kind("impurity", "1", True, 0.0, 1.0, "share of the beam's intensity in the orthogonal polarisation"),
     )
 }
 
 
 @dataclass(frozen=True, slots=True)
-class Scan:
-    """What to solve: a setup, its axes (the last one runs fastest) and the columns to compute."""
+class Parameter:
+    """One axis of the grid: a kind of `KINDS`, its values, and the beam it belongs to (if to any)."""
 
-    setup: Setup
-    axes: tuple[Axis, ...]
-    columns: tuple[str, ...]
-    target: tuple[Level, Label] | None = None
-    initial: tuple[Share, ...] = ()
-    model: str = "auto"
-
-    @property
-    def shape(self) -> tuple[int, ...]:
-        """How many values each axis has."""
-        return tuple(axis.values.size for axis in self.axes)
-
-    @property
-    def size(self) -> int:
-        """How many points the grid has."""
-        return int(np.prod(self.shape, dtype=np.int64))
-
-    def at(self, point: int) -> tuple[tuple[Axis, float], ...]:
-        """Each axis with its value at one point."""
-        places = np.unravel_index(point, self.shape)
-        return tuple((axis, float(axis.values[place])) for axis, place in zip(self.axes, places, strict=True))
+    kind: str
+    values: tuple[float, ...]
+    beam: str = ""
 
 
-@dataclass(frozen=True, slots=True)
-class Piece:
-    """The columns (`model` first) of the points from `start` on, and the seconds they took."""
+@dataclass(frozen=True, slots=True, eq=False)
+class Rows:
+    """Results of some points, in their order: parameters (n, p), and one number per point in each column.
 
-    start: int
-    columns: dict[str, list[Cell]]
-    seconds: float
+    `target` is the share of atoms in the wanted sublevel, an empty array when none is wanted.
+    """
 
-    @property
-    def size(self) -> int:
-        """How many points it has."""
-        return len(self.columns["model"])
-
-
-def check_scan(scan: Scan) -> None:
-    """Refuse a scan that cannot be, before anything is solved: its axes, its columns, the ends of its grid."""
-    check_axes(scan.setup, scan.axes)
-    for name in scan.columns:
-        if name not in COLUMNS:
-            raise OutsideValidity("columns", name, f"some of {', '.join(COLUMNS)}")
-        if COLUMNS[name].needs == "pumping" and scan.target is None:
-            raise OutsideValidity("target", "nothing", f"the sublevel that {name} is about")
-    solver = Solver(scan)
-    structure = solver.structure(solver.axes.magnitude_gauss)
-    populations_of(structure, scan.initial)
-    if scan.target is not None:
-        structure.position(*scan.target)
-    for end in (np.min, np.max):
-        solver.scheme(tuple((axis, float(end(axis.values))) for axis in scan.axes))
+    values: Array
+    scattering_per_s: Array
+    excited: Array
+    target: Array
+    lost_per_s: Array
+    models: tuple[str, ...]
 
 
-class Solver:
-    """Solves points of a scan, and keeps what neighbouring points share."""
-
-    def __init__(self, scan: Scan) -> None:
-        self.scan, self.base, self.axes = scan, build(scan.setup), axes_of(scan.setup.field_gauss)
-        self._structures: dict[float, Structure] = {}
-        self._beams: dict[tuple[int, tuple[float, ...]], Beam] = {}
-
-    def scheme(self, at: tuple[tuple[Axis, float], ...]) -> Scheme:
-        """The scheme with each axis at a value."""
-        beams = tuple(self._beam(place, at) for place in range(len(self.base.beams)))
-        return with_field(replace(self.base, beams=beams), varied_field(self.axes, beams, at))
-
-    def structure(self, magnitude_gauss: float) -> Structure:
-        """The sublevels in a field of this size."""
-        lines = [beam.line for beam in self.base.beams]
-        return _kept(self._structures, magnitude_gauss, lambda: structure_of(self.base.atom, lines, magnitude_gauss))
-
-    def cells(self, point: int) -> dict[str, Cell]:
-        """The columns at one point."""
-        scan, at = self.scan, self.scan.at(point)
-        light = prepare(self.scheme(at), scan.model, self.structure(abs(varied_magnitude(self.axes, at))))
-        wanted = {COLUMNS[name].needs for name in scan.columns}
-        initial = populations_of(light.structure, scan.initial)
-        found: dict[str, Any] = {}
-        if "pumping" in wanted and scan.target is not None:
-            pumping: Pumping = pump(light, light.structure.position(*scan.target), initial)
-            found |= {"pumping": pumping, "outcome": pumping.outcome}
-        elif "outcome" in wanted:
-            found["outcome"] = solve(light, initial)
-        if "cycling" in wanted:
-            found["cycling"] = photons_before_leaving(light.drive.scheme, model=scan.model)
-        return {"model": light.model, **{name: _read(COLUMNS[name], found) for name in scan.columns}}
-
-    def _beam(self, place: int, at: tuple[tuple[Axis, float], ...]) -> Beam:
-        base = self.base.beams[place]
-        own = [
-            (axis, value) for axis, value in at if axis.beam == base.name and PARAMETERS[axis.parameter].of == "beam"
-        ]
-        if not own:
-            return base
-
-        def make() -> Beam:
-            varied = varied_beam(self.scan.setup.beams[place], base, self.axes, own)
-            return build_at(with_beam_setup(self.scan.setup, place, varied), place, self.axes)
-
-        return _kept(self._beams, (place, tuple(value for _, value in own)), make)
+def check_parameters(scheme: Scheme, parameters: Sequence[Parameter]) -> int:
+    """Check a grid and return how many points it has."""
+    if not 1 <= len(parameters) <= MOST_PARAMETERS:
+        raise OutsideValidity("parameters", len(parameters), f"from 1 to {MOST_PARAMETERS} parameters")
+    names = [beam.name for beam in scheme.beams]
+    for item in parameters:
+        kind = KINDS.get(item.kind)
+        if kind is None:
+            raise OutsideValidity("parameter", item.kind, f"one of {', '.join(KINDS)}")
+        if kind.of_beam and item.beam not in names:
+            raise OutsideValidity("beam", item.beam, f"one of {', '.join(names)}")
+        wrong = next((value for value in item.values if not kind.low <= value <= kind.high), None)
+        if wrong is not None or not item.values:
+            allowed = f"at least one value from {kind.low:g} to {kind.high:g} {kind.unit}"
+            raise OutsideValidity(item.kind, "none" if wrong is None else wrong, allowed)
+    size = int(np.prod([len(item.values) for item in parameters], dtype=np.int64))
+    if size > LARGEST_SCAN:
+        raise OutsideValidity("grid", f"{size} points", f"at most {LARGEST_SCAN} points")
+    return size
 
 
-def _read(column: Column, found: dict[str, Any]) -> Cell:
-    return column.read(found[column.needs])
+def points(parameters: Sequence[Parameter], first: int = 0, count: int | None = None) -> Iterator[tuple[float, ...]]:
+    """Yield points of the grid in order, the last parameter fastest, from a first one on."""
+    whole = itertools.product(*(item.values for item in parameters))
+    return itertools.islice(whole, first, None if count is None else first + count)
 
 
-def _kept(held: dict[Any, Item], key: Any, make: Callable[[], Item]) -> Item:
-    if key not in held:
-        if len(held) >= KEPT:
-            held.pop(next(iter(held)))
-        held[key] = make()
-    return held[key]
+def changed(scheme: Scheme, parameters: Sequence[Parameter], values: Sequence[float]) -> Scheme:
+    """Return the scheme at one point of the grid."""
+    for item, value in zip(parameters, values, strict=True):
+        scheme = _changed(scheme, item, value)
+    return scheme
 
 
-def solve_points(scan: Scan, start: int, stop: int) -> Piece:
-    """Solve the points from `start` to before `stop`."""
-    began = time.perf_counter()
-    solver = Solver(scan)
-    rows = [solver.cells(point) for point in range(start, min(stop, scan.size))]
-    columns = {name: [row[name] for row in rows] for name in ("model", *scan.columns)}
-    return Piece(start, columns, time.perf_counter() - began)
+def _changed(scheme: Scheme, item: Parameter, value: float) -> Scheme:
+    if item.kind == "field":
+        return with_field(scheme, value * axes_of(scheme.field_gauss).direction)
+    if item.kind == "field_angle":
+        return with_field(scheme, tilted(scheme.field_gauss, value))
+    beam = next(beam for beam in scheme.beams if beam.name == item.beam)
+    if item.kind == "detuning":
+        return with_beam(scheme, item.beam, offset_mhz=beam.offset_mhz + value)
+    if item.kind == "intensity":
+        return with_beam(scheme, item.beam, intensity_mw_per_cm2=value)
+    if item.kind == "impurity":
+        return with_beam(scheme, item.beam, polarisation=with_impurity(beam, value).polarisation)
+    return with_beam(scheme, item.beam, polarisation=_reshaped(beam, item.kind, value))
+
+
+def _reshaped(beam: Beam, kind: str, value: float) -> NDArray[np.complex128]:
+    basis = transverse_basis(beam.direction)
+    ellipse = ellipse_of(basis @ beam.polarisation)
+    shape = replace(ellipse, **{f"{kind}_deg": value})
+    return polarisation_vector(beam.direction, tuple(elliptical(shape.ellipticity_deg, shape.azimuth_deg)))
+
+
+def solve_points(
+    scheme: Scheme,
+    parameters: Sequence[Parameter],
+    chunk: Sequence[Sequence[float]],
+    *,
+    target: tuple[Level, Label] | None = None,
+    model: str = "auto",
+) -> Rows:
+    """Solve the steady state at some points of the grid; sublevels are solved once per field magnitude."""
+    found = np.zeros((len(chunk), 4))
+    models = []
+    solved: dict[float, Structure] = {}
+    for row, values in enumerate(chunk):
+        here = changed(scheme, parameters, values)
+        magnitude = axes_of(here.field_gauss).magnitude_gauss
+        if magnitude not in solved:
+            solved = {magnitude: structure_of(here.atom, [beam.line for beam in here.beams], magnitude)}
+        outcome = solve(prepare(here, model, solved[magnitude]))
+        structure = outcome.light.structure
+        uppers = np.concatenate(
+            [np.arange(part.upper.start, part.upper.stop) for part in outcome.light.drive.couplings]
+        )
+        wanted = 0.0 if target is None else outcome.populations[structure.position(*target)]
+        excited = outcome.populations[np.unique(uppers)].sum()
+        found[row] = outcome.scattering_per_s, excited, wanted, outcome.lost_per_s
+        models.append(outcome.light.model)
+    held = found[:, 2] if target is not None else np.empty(0)
+    return Rows(np.array(chunk, dtype=np.float64), found[:, 0], found[:, 1], held, found[:, 3], tuple(models))

@@ -6,6 +6,7 @@ from hypothesis import given
 from hypothesis import strategies as st
 
 from levels.errors import OutsideValidity
+from levels.geometry import axes_of, direction_from_angles, polarisation_vector, resolve
 from levels.jones import (
     Plate,
     circular,
@@ -14,6 +15,7 @@ from levels.jones import (
     linear,
     plate,
     plates_for,
+    plates_toward,
     through_plates,
     with_impurity,
 )
@@ -80,6 +82,18 @@ def test_impurity_is_the_share_of_the_other_polarisation(impurity, phase):
     mixed = with_impurity(circular("right"), impurity, phase)
     assert abs(np.vdot(circular("left"), mixed)) ** 2 == pytest.approx(impurity, abs=1e-12)
     assert np.linalg.norm(mixed) == pytest.approx(1.0)
+
+
+@given(st.floats(0.0, 1.0), st.sampled_from([-1, 0, 1]), st.floats(5.0, 85.0), ANGLES)
+def test_plates_reach_the_wanted_fraction(wanted, q, angle, polariser):
+    """The plates make exactly the wanted fraction of q, or the largest that the beam's direction allows."""
+    axes = axes_of((0, 0, 1.0))
+    direction = direction_from_angles(axes, angle, 30.0)
+    setting, reached = plates_toward(direction, axes, q, wanted, polariser_deg=polariser)
+    plates = [plate("half", setting.half_wave_deg), plate("quarter", setting.quarter_wave_deg)]
+    found = resolve(direction, polarisation_vector(direction, through_plates(polariser, plates)), axes)
+    assert found.fraction(q) == pytest.approx(reached, abs=1e-9)
+    assert reached == pytest.approx(min(wanted, found.attainable[q + 1]))
 
 
 @pytest.mark.parametrize(

@@ -1,212 +1,108 @@
-"""Scans: each point is the scheme that the same description would make, whatever the piece that solves it."""
+"""Scans: the grid and its order, what each parameter changes, chunks that do not matter, and refusals."""
 
 import pickle
-from dataclasses import replace
-from typing import Any
 
 import numpy as np
 import pytest
 
-from levels.cycling import photons_before_leaving
 from levels.errors import OutsideValidity
-from levels.geometry import axes_of, resolve
-from levels.jones import plate
-from levels.pumping import prepare, pump, solve
-from levels.scan import COLUMNS, Scan, Solver, check_scan, solve_points
-from levels.setup import BeamSetup, Optics, Setup, Share, Tuning, build
-from levels.vary import PARAMETERS, Axis
-from tests.levels.pumping_records import CA40, RB87_D1, simple_atom
+from levels.geometry import axes_of
+from levels.jones import ellipse_of
+from levels.pumping import prepare, solve
+from levels.scan import KINDS, Parameter, changed, check_parameters, points, solve_points
+from levels.trapcheck import helicity_of
+from tests.levels.pumping_records import RB87_D1
+from tests.levels.test_pumping import ion_scheme, pumping_scheme
 
-BLUE, RED, D1 = CA40.lines[0], CA40.lines[1], RB87_D1.lines[0]
-WAVE = Optics(polariser_deg=0.0, plates=(plate("half", 10.0), plate("quarter", 5.0)))
-
-
-def ion(field: Any = (0.0, 0.0, 1.0), **given: Any) -> Setup:
-    blue = {"optics": Optics(linear_deg=30.0), "tuning": Tuning(-10.0), "saturation": 1.0, **given}
-    red = BeamSetup("red", RED, Optics(linear_deg=30.0), Tuning(15.0), (1.0, 0.0, 0.0), saturation=3.0)
-    return Setup(CA40, (BeamSetup("blue", BLUE, direction=(1.0, 0.0, 0.0), **blue), red), field)
+SCHEME = ion_scheme((0.0, 1.0, 1.0), 20.0)
 
 
-def axis(parameter: str, *values: float, beam: str = "", **more: Any) -> Axis:
-    return Axis(parameter, np.array(values), beam, **more)
+def at(kind, value, beam="red"):
+    return changed(SCHEME, [Parameter(kind, (value,), beam)], [value])
 
 
-def scan(
-    *axes: Axis, setup: Setup | None = None, columns: tuple[str, ...] = ("scattering_per_s",), **more: Any
-) -> Scan:
-    return Scan(setup or ion(), axes, columns, **more)
+def red(scheme):
+    return next(beam for beam in scheme.beams if beam.name == "red")
 
 
-def scattering(whole: Scan) -> list[Any]:
-    check_scan(whole)
-    return solve_points(whole, 0, whole.size).columns["scattering_per_s"]
+def test_points_run_with_the_last_parameter_fastest():
+    """The grid is the product of the values in the order given; any stretch of it can be taken."""
+    grid = [Parameter("field", (1.0, 2.0)), Parameter("detuning", (0.0, 5.0, 9.0), "red")]
+    assert check_parameters(SCHEME, grid) == 6
+    whole = list(points(grid))
+    assert whole[:4] == [(1.0, 0.0), (1.0, 5.0), (1.0, 9.0), (2.0, 0.0)]
+    assert list(points(grid, 2, 3)) == whole[2:5]
 
 
-def test_pieces_do_not_matter() -> None:
-    """Whole, in pieces and after a journey through pickle a grid gives the same bits; the last axis is fastest."""
-    whole = scan(axis("field_magnitude", 0.5, 2.0), axis("detuning", -30.0, -20.0, -10.0, beam="blue"))
-    check_scan(whole)
-    together = solve_points(whole, 0, 6)
-    travelled = pickle.loads(pickle.dumps(whole))
-    apart = [solve_points(travelled, k, k + 1) for k in (4, 0, 5, 1, 3, 2)]
-    for name, column in together.columns.items():
-        assert [piece.columns[name][0] for piece in sorted(apart, key=lambda piece: piece.start)] == column
-    assert [value for _, value in whole.at(1)] == [0.5, -20.0]
-    assert (whole.size, whole.shape, together.size) == (6, (2, 3), 6)
+def test_each_parameter_changes_its_own_thing():
+    """Field keeps its direction, its angle its size; a beam keeps everything but the one thing scanned."""
+    assert at("field", 3.0).field_gauss == pytest.approx(3.0 * np.array([0, 1, 1]) / np.sqrt(2))
+    turned = at("field_angle", 30.0).field_gauss
+    assert np.linalg.norm(turned) == pytest.approx(np.sqrt(2))
+    assert turned @ SCHEME.field_gauss / 2 == pytest.approx(np.cos(np.radians(30.0)))
+    assert red(at("detuning", 7.0)).offset_mhz == pytest.approx(17.0)
+    assert red(at("intensity", 7.0)).intensity_mw_per_cm2 == 7.0
+    assert helicity_of(red(at("ellipticity", 45.0))) == pytest.approx(1.0)
+    assert abs(np.vdot(red(at("impurity", 0.1)).polarisation, red(SCHEME).polarisation)) ** 2 == pytest.approx(0.9)
+    from levels.geometry import transverse_basis
+
+    jones = transverse_basis(red(SCHEME).direction) @ red(at("azimuth", 50.0)).polarisation
+    assert ellipse_of(jones).azimuth_deg == pytest.approx(50.0)
+    assert at("detuning", 7.0).beams[0] is SCHEME.beams[0]
 
 
-def test_a_point_is_the_scheme_of_its_description() -> None:
-    """Field and detuning scanned give the scattering of schemes described with these numbers."""
-    found = scattering(scan(axis("field_magnitude", 0.5, 2.0), axis("detuning", -30.0, -10.0, beam="blue")))
-    expected = [
-        solve(prepare(build(ion((0.0, 0.0, field), tuning=Tuning(detuning))))).scattering_per_s
-        for field in (0.5, 2.0)
-        for detuning in (-30.0, -10.0)
-    ]
-    assert found == pytest.approx(expected, rel=1e-9)
+def test_rows_are_single_solutions_whatever_the_chunks():
+    """Each row is the outcome of its scheme, and two chunks give what one gives."""
+    grid = [Parameter("field", (0.5, 2.0)), Parameter("detuning", (-5.0, 5.0), "red")]
+    chunk = list(points(grid))
+    whole = solve_points(SCHEME, grid, chunk)
+    for row, values in enumerate(chunk):
+        single = solve(prepare(changed(SCHEME, grid, values)))
+        assert whole.scattering_per_s[row] == pytest.approx(single.scattering_per_s, rel=1e-9)
+    parts = [solve_points(SCHEME, grid, chunk[:1]), solve_points(SCHEME, grid, chunk[1:])]
+    assert np.concatenate([part.scattering_per_s for part in parts]).tolist() == whole.scattering_per_s.tolist()
+    assert whole.models == ("bloch",) * 4
+    assert whole.target.size == 0
 
 
-@pytest.mark.parametrize(
-    ("given", "described"),
-    [
-        (axis("intensity", 7.0, beam="blue"), {"saturation": None, "intensity_mw_per_cm2": 7.0}),
-        (axis("saturation", 7.0, beam="blue"), {"saturation": 7.0}),
-        (axis("linewidth", 3.0, beam="blue"), {"linewidth_mhz": 3.0}),
-        (axis("linear", 70.0, beam="blue"), {"optics": Optics(linear_deg=70.0)}),
-        (axis("ellipticity", 20.0, beam="blue"), {"optics": Optics(ellipticity_deg=20.0, azimuth_deg=30.0)}),
-        (axis("azimuth", 50.0, beam="blue"), {"optics": Optics(linear_deg=50.0)}),
-        (axis("impurity", 0.2, beam="blue"), {"optics": Optics(linear_deg=30.0, impurity=0.2)}),
-    ],
-    ids=lambda item: item.parameter if isinstance(item, Axis) else "",
-)
-def test_each_parameter_of_a_beam(given: Axis, described: dict[str, Any]) -> None:
-    """A beam's parameter scanned is that parameter described."""
-    expected = solve(prepare(build(ion(**described)))).scattering_per_s
-    assert scattering(scan(given)) == pytest.approx([expected], rel=1e-7)
+def test_target_is_followed():
+    """With a wanted sublevel its share of the atoms is a column: it falls with the impurity."""
+    grid = [Parameter("impurity", (0.0, 0.02), "pump")]
+    scheme = pumping_scheme(linewidth_mhz=1.0)
+    rows = solve_points(scheme, grid, list(points(grid)), target=(RB87_D1.lines[0].lower, (4, 4)))
+    assert rows.target[0] == pytest.approx(1.0, abs=1e-6)
+    assert rows.target[1] < 0.99
 
 
-def test_optics_and_power_are_scanned_as_described() -> None:
-    """Polariser, either wave plate and the power: each changes its own number and keeps the others."""
-    described = {"optics": WAVE, "saturation": None, "power_mw": 0.1, "waist_mm": 2.0}
-    setup = ion(**described)
-    turned = replace(WAVE, plates=(WAVE.plates[0], plate("quarter", 33.0)))
-    for given, changed in (
-        (axis("polariser", 25.0, beam="blue"), {"optics": replace(WAVE, polariser_deg=25.0)}),
-        (axis("plate", 33.0, beam="blue", plate=2), {"optics": turned}),
-        (axis("power", 0.7, beam="blue"), {"power_mw": 0.7}),
-    ):
-        expected = solve(prepare(build(ion(**{**described, **changed})))).scattering_per_s
-        assert scattering(scan(given, setup=setup)) == pytest.approx([expected], rel=1e-9)
-
-
-def test_two_parameters_of_one_polarisation_go_together() -> None:
-    """Ellipticity and azimuth on two axes make the ellipse of both; two plates likewise."""
-    both = scan(axis("azimuth", 10.0, 80.0, beam="blue"), axis("ellipticity", -20.0, 40.0, beam="blue"))
-    beam = Solver(both).scheme(both.at(3)).beams[0]
-    wanted = build(ion(optics=Optics(ellipticity_deg=40.0, azimuth_deg=80.0))).beams[0]
-    assert abs(np.vdot(wanted.polarisation, beam.polarisation)) == pytest.approx(1.0)
-
-
-def test_field_turns_from_the_polarisation_to_the_beam() -> None:
-    """At 0 degrees the field lies along the linear polarisation (all pi), at 90 along the beam (no pi)."""
-    whole = scan(axis("field_from_polarisation", 0.0, 54.7, 90.0, beam="blue"))
-    check_scan(whole)
-    pi = []
-    for point in range(3):
-        scheme = Solver(whole).scheme(whole.at(point))
-        light = scheme.beams[0]
-        pi.append(resolve(light.direction, light.polarisation, axes_of(scheme.field_gauss)).fraction(0))
-    assert pi == pytest.approx([1.0, np.cos(np.radians(54.7)) ** 2, 0.0], abs=1e-12)
-
-
-def test_field_angles_are_those_of_the_laboratory() -> None:
-    """Polar 90 and azimuth 90 degrees is the laboratory y; misalignment leaves the direction by its angle."""
-    whole = scan(axis("field_polar", 90.0), axis("field_azimuth", 90.0), axis("field_magnitude", -2.0))
-    assert Solver(whole).scheme(whole.at(0)).field_gauss == pytest.approx([0, -2, 0], abs=1e-12)
-    tilted = scan(axis("misalignment", 8.5))
-    field = Solver(tilted).scheme(tilted.at(0)).field_gauss
-    assert field[2] == pytest.approx(np.cos(np.radians(8.5)))
-
-
-def test_lasers_stay_when_the_field_moves() -> None:
-    """A laser set to a Zeeman component at the setup's field keeps its frequency while the field is scanned."""
-    setup = ion((0.0, 0.0, 1.0), tuning=Tuning(lower=(1, 1), upper=(1, -1)))
-    whole = scan(axis("field_magnitude", 1.0, 10.0), setup=setup)
-    first, second = (Solver(whole).scheme(whole.at(k)).beams[0].offset_mhz for k in (0, 1))
-    assert first == second
-
-
-def test_pumping_and_cycling_columns() -> None:
-    """Purity, time and photons of pumping, and photons before loss, are those of the library's own functions."""
-    pumping = BeamSetup("p", D1, Optics(handedness="right"), Tuning(component=(4, 4)), (0.0, 0.0, 1.0), saturation=0.3)
-    back = replace(pumping, name="r", tuning=Tuning(component=(2, 4)), linewidth_mhz=1.0)
-    setup = Setup(RB87_D1, (pumping, back), (0.0, 0.0, 1.0))
-    names = tuple(COLUMNS)
-    whole = scan(axis("misalignment", 0.0, 5.0), setup=setup, columns=names, target=(D1.lower, (4, 4)))
-    check_scan(whole)
-    piece = solve_points(whole, 0, 2)
-    assert list(piece.columns) == ["model", *names]
-    light = prepare(build(setup))
-    expected = pump(light, light.structure.position(D1.lower, (4, 4)))
-    assert piece.columns["purity"][0] == pytest.approx(expected.purity)
-    assert piece.columns["pumping_photons"][0] == pytest.approx(expected.photons)
-    assert piece.columns["fullest"][0] == "s_2S1/2 2,2"
-    assert piece.columns["purity"][1] < piece.columns["purity"][0]  # type: ignore[operator]
-    assert piece.columns["photons_before_loss"][0] == photons_before_leaving(build(setup)).photons
-
-
-def test_start_populations_count_where_they_decide() -> None:
-    """Sigma+ light on J = 2 - 1 leaves m = 1 and m = 2 dark: atoms that start in one of them all stay there."""
-    atom = simple_atom(4, 2)
-    line = atom.lines[0]
-    beam = BeamSetup("a", line, Optics(handedness="right"), direction=(0.0, 0.0, 1.0), saturation=1.0)
-    for m in (2, 4):
-        whole = scan(
-            axis("detuning", -10.0, beam="a"),
-            setup=Setup(atom, (beam,), (0.0, 0.0, 1.0)),
-            columns=("fullest", "fullest_share", "unique"),
-            initial=(Share(line.lower, (4, m), 1.0),),
-        )
-        check_scan(whole)
-        columns = solve_points(whole, 0, 1).columns
-        assert columns["fullest"] == [f"g 2,{m // 2}"]
-        assert columns["fullest_share"] == pytest.approx([1.0], abs=1e-9)
-        assert columns["unique"] == [0.0]
+def test_schemes_travel_between_processes():
+    """A scheme pickles, and the copy gives the same rows."""
+    grid = [Parameter("field", (1.0,))]
+    copy = pickle.loads(pickle.dumps(SCHEME))
+    assert axes_of(copy.field_gauss).magnitude_gauss == pytest.approx(np.sqrt(2))
+    ours, theirs = (solve_points(scheme, grid, [(1.0,)]).scattering_per_s for scheme in (SCHEME, copy))
+    assert ours.tolist() == theirs.tolist()
 
 
 @pytest.mark.parametrize(
-    ("axes", "more", "parameter"),
+    ("grid", "parameter"),
     [
-        ((), {}, "axes"),
-        ((axis("linear", 0.0, beam="blue"),) * 4, {}, "axes"),
-        ((axis("colour", 0.0),), {}, "axes.0.parameter"),
-        ((axis("linear", 0.0),), {}, "axes.0.beam"),
-        ((axis("field_polar", 0.0, beam="blue"),), {}, "axes.0.beam"),
-        ((axis("linear", beam="blue"),), {}, "axes.0.values"),
-        ((axis("linear", np.nan, beam="blue"),), {}, "axes.0.values"),
-        ((axis("linear", 0.0, beam="blue"), axis("linear", 1.0, beam="blue")), {}, "axes"),
-        ((axis("field_polar", 0.0), axis("field_from_polarisation", 1.0, beam="red")), {}, "axes"),
-        ((axis("ellipticity", 0.0, 60.0, beam="blue"),), {}, "beams.0.ellipticity"),
-        ((axis("power", 1.0, beam="blue"),), {}, "waist"),
-        ((axis("plate", 1.0, beam="blue"),), {}, "plate"),
-        ((axis("polariser", 1.0, beam="blue"),), {}, "polarisation"),
-        ((axis("field_polar", 1.0),), {"columns": ("colour",)}, "columns"),
-        ((axis("field_polar", 1.0),), {"columns": ("purity",)}, "target"),
-        ((axis("field_polar", 1.0),), {"target": (BLUE.lower, (3, 1))}, "sublevel"),
-        ((axis("field_polar", 1.0),), {"initial": (Share(BLUE.lower, None, 0.5),)}, "initial"),
+        ([], "parameters"),
+        ([Parameter("field", (1.0,))] * 4, "parameters"),
+        ([Parameter("colour", (1.0,))], "parameter"),
+        ([Parameter("detuning", (1.0,), "green")], "beam"),
+        ([Parameter("ellipticity", (50.0,), "red")], "ellipticity"),
+        ([Parameter("field", (float("nan"),))], "field"),
+        ([Parameter("field", ())], "field"),
+        ([Parameter("field", tuple(range(2000))), Parameter("detuning", tuple(range(2000)), "red")], "grid"),
     ],
 )
-def test_scans_that_cannot_be_are_refused_before_they_start(
-    axes: tuple[Axis, ...], more: dict[str, Any], parameter: str
-) -> None:
-    """Axes, columns, targets and the ends of the grid are checked first, each fault with its name."""
+def test_impossible_grids_name_their_parameter(grid, parameter):
+    """Unknown kinds and beams, values out of range and endless grids are refused by name."""
     with pytest.raises(OutsideValidity) as caught:
-        check_scan(scan(*axes, **more))
+        check_parameters(SCHEME, grid)
     assert caught.value.parameter == parameter
 
 
-def test_tables_say_what_their_rows_are() -> None:
-    """Each parameter and column has a meaning; names are identifiers."""
-    for row in (*PARAMETERS.values(), *COLUMNS.values()):
-        assert row.meaning
-        assert row.name.isidentifier()
+def test_table_of_kinds_is_sound():
+    """Every kind has a unit, a range and a meaning."""
+    assert all(kind.unit and kind.meaning and kind.low < kind.high for kind in KINDS.values())
