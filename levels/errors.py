@@ -1,4 +1,4 @@
-"""What can go wrong below the web layer, each with the data to recover from it."""
+"""What can go wrong below the web layer, each with the data to recover from it. They travel between processes."""
 
 from collections.abc import Sequence
 
@@ -11,6 +11,9 @@ class UnknownName(LookupError):
         near = f"; nearest: {', '.join(self.nearest)}" if self.nearest else ""
         super().__init__(f"no {kind} {given!r}{near}{'; ' + hint if hint else ''}")
 
+    def __reduce__(self) -> tuple[type, tuple[object, ...]]:
+        return type(self), (self.kind, self.given, self.nearest, self.hint)
+
 
 class NotPublished(LookupError):
     """A constant that the answer needs and the catalogue does not have."""
@@ -19,6 +22,9 @@ class NotPublished(LookupError):
         self.constant, self.owner, self.hint = constant, owner, hint
         super().__init__(f"{constant} of {owner} is not in the catalogue{'; ' + hint if hint else ''}")
 
+    def __reduce__(self) -> tuple[type, tuple[object, ...]]:
+        return type(self), (self.constant, self.owner, self.hint)
+
 
 class OutsideValidity(ValueError):
     """A value that the model or the request cannot take, with the range or the rule it breaks."""
@@ -26,6 +32,9 @@ class OutsideValidity(ValueError):
     def __init__(self, parameter: str, given: object, allowed: str) -> None:
         self.parameter, self.given, self.allowed = parameter, given, allowed
         super().__init__(f"{parameter} = {given}: {allowed}")
+
+    def __reduce__(self) -> tuple[type, tuple[object, ...]]:
+        return type(self), (self.parameter, self.given, self.allowed)
 
 
 class DataError(ValueError):
