@@ -25,7 +25,7 @@ from numpy.typing import ArrayLike, NDArray
 from levels.angular import six_j
 from levels.blocks import hyperfine_shift
 from levels.constants import HARTREE_MHZ, MHZ_NM
-from levels.errors import OutsideValidity, UnknownName
+from levels.errors import NotPublished, OutsideValidity, UnknownName
 from levels.notation import format_half, term_quantum_numbers
 from levels.partners import (
     SCALAR,
@@ -161,6 +161,8 @@ def polarisability(partners: Partners, wavelength_nm: ArrayLike, twice_F: int | 
     if twice_F is not None and twice_F not in hyperfine_levels(level):
         allowed = ", ".join(map(format_half, hyperfine_levels(level)))
         raise UnknownName("hyperfine level", f"F = {format_half(twice_F)}", hint=f"F of {level.name} is {allowed}")
+    if twice_F is not None and level.A is None and level.twice_J and level.twice_I:
+        raise NotPublished("A", f"{level.atom} {level.name}", "ask for the whole level instead of one F")
     wavelengths = as_wavelengths(wavelength_nm)
     light = MHZ_NM / wavelengths
     parts, close = np.zeros((len(partners.lines), 2, 3, light.size)), np.zeros(light.size, dtype=np.bool_)

@@ -6,7 +6,7 @@ from typing import Annotated, Any
 
 from pydantic import BeforeValidator, Field
 
-from levels.errors import OutsideValidity
+from levels.errors import NotPublished, OutsideValidity
 from levels.lightshift import LARGEST_INTENSITY, solvable
 from levels.notation import shown
 from levels.partners import Doubt, Partners, other_end, partners_of
@@ -109,8 +109,13 @@ def setting_of(asked: PolarisedAsked, wavelength_nm: float) -> Setting:
 
 
 def partners(context: Context, atom: str, level: str) -> Partners:
-    """A level with its lines."""
-    return partners_of(context.atom(atom), context.level(atom, level))
+    """A level with its lines, of which at least one has a strength; or a remainder."""
+    found = partners_of(context.atom(atom), context.level(atom, level))
+    if not found.lines and not found.remainder.inputs:
+        names = ", ".join(line.name for line in found.left_out) or "any electric-dipole line"
+        hint = "light shifts are summed over lines; a lab overlay can supply strengths"
+        raise NotPublished(f"the strength of {names}", f"{found.level.atom} {found.level.name}", hint)
+    return found
 
 
 def light_inputs(*sides: Partners) -> Used:
