@@ -4,7 +4,7 @@ The ranges are common practice: acousto-optic modulators reach 40 to 400 MHz in 
 electro-optic sidebands up to some 25 GHz; beyond that another lock point or a beat between two lasers is the way.
 """
 
-from levels.locks import Point, Wanted
+from levels.locks import Lock, Point, Wanted
 from levels.plan import Plan
 
 ACOUSTO_RANGE_MHZ = (40.0, 400.0)
@@ -19,14 +19,17 @@ def would_do(plan: Plan, wanted: Wanted) -> list[str]:
     for lock in plan.order.locks:
         if lock.partner == wanted.name or (wanted.locks and lock.name not in wanted.locks):
             continue
-        gap = _gap(wanted, plan.points[lock.name], lock.spacing_mhz)
+        gap = _gap(wanted, plan.points[lock.name], lock)
         gaps.append((abs(gap), lock.name, gap))
     return [f"from {name}: {_suggestion(gap)}" for _, name, gap in sorted(gaps)[:SUGGESTED]]
 
 
-def _gap(wanted: Wanted, point: Point, spacing_mhz: float | None) -> float:
+def _gap(wanted: Wanted, point: Point, lock: Lock) -> float:
     gap = wanted.point.frequency_mhz - point.frequency_mhz
-    return gap - round(gap / spacing_mhz) * spacing_mhz if spacing_mhz else gap
+    if not lock.spacing_mhz:
+        return gap
+    tooth = max(-lock.last_tooth, min(lock.last_tooth, round(gap / lock.spacing_mhz)))
+    return gap - tooth * lock.spacing_mhz
 
 
 def _suggestion(gap_mhz: float) -> str:

@@ -13,6 +13,7 @@ from levels.positions import Place, difference_spread, own_spread, slope_spread
 from levels.quantity import combine
 
 FEATURE, FREQUENCY, COMB, BEAT = "feature", "frequency", "comb", "beat"
+DEFAULT_SPAN_MHZ = 1e7  # a fibre comb, amplified and broadened
 KINDS = (FEATURE, FREQUENCY, COMB, BEAT)
 LOWEST_MHZ, HIGHEST_MHZ = 1e5, 1e10  # light, from the far infrared to the vacuum ultraviolet
 
@@ -39,7 +40,10 @@ class Wanted:
 
 @dataclass(frozen=True, slots=True, eq=False)
 class Lock:
-    """A lock point. `spacing_mhz` makes it a comb; `beat_mhz` is the range of a beat frequency that it adds."""
+    """A lock point. `spacing_mhz` makes it a comb, whose lines reach `span_mhz` to either side of the stated one.
+
+    `beat_mhz` is the range of a beat frequency that it adds.
+    """
 
     name: str
     kind: str
@@ -47,6 +51,12 @@ class Lock:
     spacing_mhz: float | None = None
     beat_mhz: tuple[float, float] | None = None
     partner: str = ""
+    span_mhz: float = DEFAULT_SPAN_MHZ
+
+    @property
+    def last_tooth(self) -> int:
+        """The number of its outermost lines."""
+        return int(self.span_mhz // self.spacing_mhz) if self.spacing_mhz else 0
 
 
 def point_of_place(place: Place, detuning_mhz: float = 0.0, by_sublevel: bool = False) -> Point:

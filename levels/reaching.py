@@ -145,7 +145,8 @@ def _from_source(
     reach = chains.reach + np.abs(M) * source.beat_half_mhz
     tooth = np.zeros(M.size, dtype=np.int64)
     if source.spacing_mhz:
-        tooth = np.rint(gap / (M * source.spacing_mhz)).astype(np.int64)
+        last = source.lock.last_tooth
+        tooth = np.clip(np.rint(gap / (M * source.spacing_mhz)), -last, last).astype(np.int64)
         gap = gap - tooth * M * source.spacing_mhz
     outside = np.abs(gap) - reach
     miss = np.where(outside > tolerance_mhz, outside, 0.0)

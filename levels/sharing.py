@@ -117,7 +117,8 @@ def _points(
         wide = reach / np.abs(M)
         tooth = np.zeros(M.size)
         if source.spacing_mhz:
-            tooth = np.rint((middle - centre) / source.spacing_mhz)
+            last = source.lock.last_tooth
+            tooth = np.clip(np.rint((middle - centre) / source.spacing_mhz), -last, last)
         y = np.clip(centre, middle - tooth * source.spacing_mhz - wide, middle - tooth * source.spacing_mhz + wide)
         inside = np.abs(y - centre) <= half + 1e-12
         found.append(np.array([np.clip(y[inside], centre - half, centre + half), tooth[inside]]).T)

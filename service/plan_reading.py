@@ -1,7 +1,7 @@
 """Reads a plan's request: names become records, records become optical frequencies and modulators."""
 
 from levels.errors import OutsideValidity
-from levels.locks import BEAT, COMB, FEATURE, Lock, Point, Wanted, check_point, point_of_place
+from levels.locks import BEAT, COMB, DEFAULT_SPAN_MHZ, FEATURE, Lock, Point, Wanted, check_point, point_of_place
 from levels.modulators import HARMONIC, Modulator, check_modulator
 from levels.moves import Earlier
 from levels.notation import parse_component, parse_feature
@@ -101,7 +101,9 @@ def _lock(context: Context, asked: LockAsked, lines: list[Line]) -> Lock:
     if asked.kind == COMB and not asked.spacing:
         raise OutsideValidity(f"{owner} spacing", asked.spacing, "the distance of the comb's lines, above 0")
     point = Point(check_point(f"{owner} frequency", asked.frequency), asked.uncertainty)
-    return Lock(asked.name, asked.kind, point, asked.spacing if asked.kind == COMB else None, beat)
+    spacing = asked.spacing if asked.kind == COMB else None
+    span = DEFAULT_SPAN_MHZ if asked.span is None else asked.span
+    return Lock(asked.name, asked.kind, point, spacing, beat, span_mhz=span)
 
 
 def _feature(owner: str, line: Line, text: str) -> Place:

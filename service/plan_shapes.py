@@ -40,6 +40,10 @@ class LockAsked(Strict):
     frequency: LightMhz | None = Field(None, description="of a stated frequency, or of any one line of a comb, in MHz")
     uncertainty: PositiveMhz | None = Field(None, description="standard uncertainty of that frequency, in MHz")
     spacing: PositiveMhz | None = Field(None, description="of a comb or cavity: distance of its lines, in MHz")
+    span: PositiveMhz | None = Field(
+        None,
+        description="of a comb: how far its lines reach to either side of the stated one; 10 THz if left out",
+    )
     beat_with: Label | None = Field(
         None, description="of a beat: a wanted frequency that stands before, or a lock of fixed frequency"
     )

@@ -192,6 +192,17 @@ def test_comb_takes_its_nearest_line() -> None:
     assert route.settings == ()
 
 
+def test_comb_ends() -> None:
+    """A comb whose lines reach 1 GHz has none for light 2 GHz away: the miss counts from its last line."""
+    comb = Lock("comb", COMB, at(0.0), 250.0, None, span_mhz=1_100.0)
+    (served,) = plan(Order(wanted(2_000.0), (comb,), ())).served
+    assert served.route is None
+    assert served.nearest is not None
+    assert served.nearest.tooth == 4
+    assert served.nearest.miss_mhz == pytest.approx(1_000.0)
+    assert "+1000.000 MHz" in would_do(plan(Order(wanted(2_000.0), (comb,), ())), served.wanted)[0]
+
+
 def test_beat_with_another_laser_of_the_plan() -> None:
     """A repump locked by its beat with the cooling light needs that to be reached, and to stand before it."""
     beat = Lock("beat", BEAT, None, None, (6_000.0, 7_000.0), "w0")
