@@ -4,6 +4,7 @@ One class per dimension; an entry of a list says besides whose number it is and 
 """
 
 import re
+from dataclasses import replace
 from typing import Annotated, Any, ClassVar, Literal, Self
 
 from pydantic import AfterValidator, BaseModel, BeforeValidator, ConfigDict, model_validator
@@ -50,7 +51,10 @@ class Table(BaseModel):
 
 
 class Value(Table):
-    """A published number: digits and unit as published, where from, and how far it was compared."""
+    """A published number: digits and unit as published, where from, and how far it was compared.
+
+    `exact` marks what is so by definition (the ground splitting of 133Cs defines the second).
+    """
 
     dimensions: ClassVar[tuple[str, ...]] = ("number",)
     positive: ClassVar[bool] = False
@@ -61,6 +65,7 @@ class Value(Table):
     note: str = ""
     of: str = ""
     formula: str = ""
+    exact: bool = False
     alternatives: tuple[Self, ...] = ()
 
     @model_validator(mode="after")
@@ -75,12 +80,14 @@ class Value(Table):
             raise ValueError(str(error)) from None
         if self.positive and not quantity.value > 0:
             raise ValueError(f"{self.value}: must be above zero")
+        if self.exact and "(" in self.value:
+            raise ValueError(f"{self.value}: exact by definition, so it has no uncertainty to print")
         return self
 
     def quantity(self) -> Quantity:
         """The number with its provenance, in the unit it was published in."""
         formula = f"computed: {self.formula}" if self.formula else ""
-        return read(
+        number = read(
             self.value,
             source=self.source,
             evidence=self.evidence,
@@ -88,6 +95,7 @@ class Value(Table):
             note="; ".join(filter(None, (formula, self.note))),
             alternatives=[other.quantity() for other in self.alternatives],
         )
+        return replace(number, uncertainty=0.0) if self.exact else number
 
 
 class Frequency(Value):

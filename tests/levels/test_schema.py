@@ -5,9 +5,10 @@ from pathlib import Path
 from typing import Any
 
 import pytest
+from pydantic import ValidationError
 
 from levels.errors import DataError
-from levels.published import Table
+from levels.published import Table, Value
 from levels.schema import validate
 
 SECOND = '{ value = "1 s", source = "x", evidence = "checked" }'
@@ -99,3 +100,11 @@ def test_a_value_carries_its_provenance_into_the_quantity() -> None:
     assert [(other.value, other.note) for other in quantity.alternatives] == [
         (28.0, "radiation trapping not corrected")
     ]
+
+
+def test_what_is_exact_by_definition_has_no_uncertainty_left() -> None:
+    """`exact` turns an unknown uncertainty into none at all, and refuses one in print."""
+    exact = Value(value="9192.5", exact=True, source="x", evidence="recalled").quantity()
+    assert exact.uncertainty == 0.0
+    with pytest.raises(ValidationError, match="exact by definition"):
+        Value(value="9192.5(1)", exact=True, source="x", evidence="recalled")

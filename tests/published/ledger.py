@@ -143,7 +143,7 @@ def _related(printed: Fraction, sigma: float | None, row: Row) -> tuple[Fraction
 
 
 def _spread_disagreement(value: Value, mine: float | None, sigma: float | None, scale: float, row: Row) -> str:
-    if row.relation in ("rounded", "reciprocal"):
+    if row.relation in ("rounded", "reciprocal") or (value.exact and sigma is None):
         return ""
     if mine is None:  # a table's uncertainty may be left out, a text's may not
         return "" if sigma is None or row.is_table else f"{value.value} lacks the uncertainty of {row.digits}"
