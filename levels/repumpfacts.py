@@ -17,7 +17,7 @@ from levels.constants import MHZ_NM
 from levels.decaygraph import Graph, momenta
 from levels.decays import frequency_mhz_of
 from levels.errors import NotPublished
-from levels.features import natural_width_mhz
+from levels.features import has_own_centroid, natural_width_mhz
 from levels.lasers import Laser
 from levels.manifold import Manifold, manifold
 from levels.notation import format_half
@@ -207,6 +207,10 @@ def _notes(
             f"shares {line.upper.name} with {', '.join(shared)}: coherent dark resonance where both detunings are "
             "equal; detune one against the other"
         )
+    if line.centroid is not None and not has_own_centroid(line):
+        owner = line.centroid_isotope
+        whose = f"mass number {owner}" if owner.isdigit() else "the natural mixture of isotopes"
+        notes.append(f"the frequency is that of {whose}: isotope shifts of some GHz are possible")
     if line.multipole != "E1":
         notes.append(f"a {line.multipole} line: weak, it needs intense light")
     width = natural_width_mhz(line)

@@ -108,6 +108,9 @@ def cell_of(context: Context, name: str, asked: CellAsked, crossovers: bool) -> 
     if reference not in species:
         raise UnknownName("reference", str(reference), [str(A) for A in species], f"a mass number of {name}")
     lines = {A: context.line(species[A].isotope.name, asked.line) for A in dict.fromkeys((*numbers, reference))}
+    two = next((line.name for line in lines.values() if line.photons != 1), None)
+    if two is not None:
+        raise OutsideValidity("line", two, "a one-photon line")
     samples = samples_of([(species[A].isotope, lines[A]) for A in numbers])
     found, left_out = _solved(samples, asked, crossovers)
     return Cell(format_isotope(wanted.symbol, None, wanted.charge), found, lines[reference], left_out)

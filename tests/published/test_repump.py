@@ -226,8 +226,22 @@ def test_ytterbium_needs_no_repump(book: Catalogue) -> None:
     assert found.closure == "data"
 
 
-def test_rubidium_ritz_sums(book: Catalogue) -> None:
-    """A hyperfine interval reached by two lines is the same: D1 and D2 of 87Rb give 6834.682610904 MHz (SI, CIPM)."""
+def test_ritz_sum_of_calcium_ion(book: Catalogue) -> None:
+    """866 lies below 397 by the 732 nm interval: published values close to 0.27 MHz, two standard deviations.
+
+    397: Wan et al. (2014); 866: Gebert et al. (2015); 732: 729 (Sokolik et al.) less the D splitting of Solaro et al.
+    (2020).
+    """
+    found = {names(scheme)[0]: one for scheme, one in facts(book, "40Ca+", "397")}
+    interval = book.find_line("40Ca+", "732").centroid
+    setting = found["866"].settings[0]
+    assert interval is not None
+    assert setting.offset_mhz == pytest.approx(-interval.value, abs=0.3)
+    assert setting.offset_uncertainty_mhz == pytest.approx(0.130, abs=0.001)
+
+
+def test_hyperfine_interval_by_two_lines(book: Catalogue) -> None:
+    """The ground interval of 87Rb is the same by D1 and D2: 6834.682610904 MHz (SI realisations, CIPM)."""
     for line in ("780", "795"):
         offsets = {}
         for scheme, found in facts(book, "87Rb", f"{line}:2-2"):

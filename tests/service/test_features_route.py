@@ -57,6 +57,7 @@ def test_profile_sums_up(client: TestClient) -> None:
         ("/v1/elements/87Rb/features?line=780", 422, "element"),
         ("/v1/elements/Rb/features?line=999", 404, "line"),
         ("/v1/elements/Rb/features", 422, "line"),
+        ("/v1/elements/Rb/features?line=778.1", 422, "line"),
         ("/v1/elements/Rb/features?line=780&isotopes=86", 404, "isotopes"),
         ("/v1/elements/Rb/features?line=780&isotopes=%C2%B2", 404, "isotopes"),
         ("/v1/elements/Rb/features?line=780&isotopes=99999999999999999999", 404, "isotopes"),
