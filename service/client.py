@@ -11,6 +11,7 @@ from urllib.parse import quote
 import httpx2
 from pydantic import BaseModel
 
+from service.lightshift_shapes import LightshiftAnswered, PolarisabilityAnswered
 from service.problems import ProblemBody
 from service.routes import (
     angular,
@@ -22,11 +23,9 @@ from service.routes import (
     force,
     formula,
     insensitive,
-    lightshift,
     magic,
     multiplet,
     pairs,
-    polarisability,
     search,
     shift,
     slower,
@@ -147,13 +146,13 @@ class Client:
         """A formula of the field: `level` and `sublevel`, or `line`, `lower` and `upper`; `**{"as": "c"}`."""
         return self._get(f"{_atom(atom)}/formula", asked, formula.FormulaAnswered)
 
-    def lightshift(self, atom: str, **asked: Any) -> lightshift.LightshiftAnswered:
+    def lightshift(self, atom: str, **asked: Any) -> LightshiftAnswered:
         """What a light does to every sublevel: `level`, `wavelength`, `polarisation`, `field`, `power`, `waist`."""
-        return self._get(f"{_atom(atom)}/lightshift", asked, lightshift.LightshiftAnswered)
+        return self._get(f"{_atom(atom)}/lightshift", asked, LightshiftAnswered)
 
-    def polarisability(self, atom: str, **asked: Any) -> polarisability.PolarisabilityAnswered:
+    def polarisability(self, atom: str, **asked: Any) -> PolarisabilityAnswered:
         """A polarisability against wavelength: `level`, `F`, `start`, `stop`, `points`."""
-        return self._get(f"{_atom(atom)}/polarisability", asked, polarisability.PolarisabilityAnswered)
+        return self._get(f"{_atom(atom)}/polarisability", asked, PolarisabilityAnswered)
 
     def magic(self, atom: str, **asked: Any) -> magic.MagicAnswered:
         """Magic conditions and tune-outs: `solve`, `level`, `lower`, `upper_level`, `upper` and what is held."""
