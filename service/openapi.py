@@ -22,7 +22,11 @@ TAGS = (
         "name": "scheme",
         "description": "Beams and a field checked as a whole: polarisations, populations, dark states, what to change.",
     },
-    {"name": "plan", "description": "Lock points, leaks and repumpers, and the settings of a frequency plan."},
+    {
+        "name": "plan",
+        "description": "Lock points, leaks and repumpers, and the settings of a frequency plan. Nothing here drives "
+        "hardware, and a laser safety officer has the last word on beams and powers.",
+    },
     {"name": "motion", "description": "What light and field do to the motion of an atom: cooling and magnetic traps."},
     {
         "name": "light",

@@ -21,7 +21,7 @@ def answer_plan(context: Context, path: Mapping[str, str], asked: PlanAsked) -> 
 
     Every chain of up to `max_chain` modulators is compared; `search` says where it was not. The answer's `plan` is a
     body to post again after data or hardware changed: settings keep their structure while it reaches and the answer
-    says what moves. This computes and drives nothing; a laser safety officer decides about beams.
+    says what moves.
     """
     order, lines = order_of(context, asked)
     found = plan(order)

@@ -70,8 +70,7 @@ def answer_repump(context: Context, path: Mapping[str, str], asked: RepumpAsked)
     """Every state that decays and off-resonant light reach, photons and time before loss, what brings the atom back.
 
     Numbers of photons follow from published branching. What is not published is bounded, never guessed: each number
-    comes with the worst and the best that unknown branching among the levels of the book allows. Powers are ratios for
-    planning; your laser safety officer has the last word on beams.
+    comes with the worst and the best that unknown branching among the levels of the book allows.
     """
     atom = context.atom(path["atom"])
     texts = split_drives(asked.drive)
