@@ -29,7 +29,8 @@ import pathlib, sys, sysconfig
 root, bin_ = sys.argv[1], pathlib.Path(sys.prefix, "bin")
 pathlib.Path(sysconfig.get_path("purelib"), "sublevel.pth").write_text(root + "\n")
 command = bin_ / "sublevel"
-command.write_text(f"#!{bin_ / 'python'}\nfrom service.cli import main\n\nraise SystemExit(main())\n")
+guard = 'if __name__ == "__main__":'  # processes of a pool import this file too
+command.write_text(f"#!{bin_ / 'python'}\nfrom service.cli import main\n\n{guard}\n    raise SystemExit(main())\n")
 command.chmod(0o755)
 PY
 }

@@ -14,7 +14,7 @@ from starlette.responses import Response
 from starlette.types import ASGIApp, Receive, Scope, Send
 
 from service import VERSION
-from service.asking import QuestionRoute, Running
+from service.asking import Running
 from service.bench import bench_routes
 from service.cache import AnswerCache
 from service.context import build_context
@@ -25,7 +25,9 @@ from service.middleware import Front
 from service.openapi import build_openapi
 from service.problems import MEDIA_TYPE, Problem, nearest_names, problem_of
 from service.routes import QUESTIONS, book, health
+from service.scans import Scans
 from service.settings import Settings
+from service.streaming import route_of
 from service.work import HeavyWork
 
 LOG = logging.getLogger("sublevel")
@@ -55,13 +57,14 @@ def build_app(settings: Settings | None = None) -> Application:
 
     @asynccontextmanager
     async def lifespan(app: FastAPI) -> AsyncIterator[None]:
-        heavy = HeavyWork(settings)
-        app.state.running = Running(build_context(settings), AnswerCache(settings.cache_bytes), heavy)
+        heavy, scans = HeavyWork(settings), Scans(settings)
+        app.state.running = Running(build_context(settings), AnswerCache(settings.cache_bytes), heavy, scans)
         gc.collect()
         gc.freeze()  # the catalogue stays: a collection need not walk through it again and again
         yield
         app.state.running = None
         heavy.close()
+        scans.close()
 
     api = FastAPI(
         title="Sublevel",
@@ -77,7 +80,7 @@ def build_app(settings: Settings | None = None) -> Application:
         exception_handlers={HTTPException: answer_http_error, Problem: answer_problem, Exception: answer_error},
     )
     api.state.metrics, api.state.running = metrics, None
-    questions = [QuestionRoute(question) for question in QUESTIONS]
+    questions = [route_of(question) for question in QUESTIONS]
     api.router.routes.extend(questions)
     api.router.routes.extend(PLAIN_ROUTES)
     document = cache(partial(build_openapi, api, QUESTIONS))

@@ -1,7 +1,7 @@
 """Answers already given, as ready bytes: a release's answers never change, so a repeated question costs nothing."""
 
 from collections import OrderedDict
-from collections.abc import Iterator
+from collections.abc import AsyncGenerator, Iterator
 from typing import NamedTuple
 
 Key = tuple[str, bytes, bytes]
@@ -15,7 +15,7 @@ class Reply(NamedTuple):
 
     status: int
     headers: Headers
-    body: bytes | Iterator[bytes] = b""
+    body: bytes | Iterator[bytes] | AsyncGenerator[bytes, None] = b""
     tag: bytes = b""
 
 

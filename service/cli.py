@@ -9,7 +9,7 @@ import os
 import sys
 from collections.abc import Sequence
 
-FEW_THREADS = ("OPENBLAS_NUM_THREADS", "OMP_NUM_THREADS", "MKL_NUM_THREADS")
+from service.worker import FEW_THREADS
 
 
 def main(arguments: Sequence[str] | None = None) -> int:

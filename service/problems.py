@@ -151,6 +151,13 @@ TYPES = {
             "Ask again after the seconds in the Retry-After header.",
         ),
         ProblemType(
+            "scheduler-away",
+            503,
+            "Scheduler away",
+            "This server sends scans to a Dask scheduler, and that one does not answer or has no workers.",
+            "Ask again after the seconds in the Retry-After header; if it stays, tell whoever runs the server.",
+        ),
+        ProblemType(
             "not-ready",
             503,
             "Server not ready",

@@ -5,7 +5,7 @@ same rows. `asking` has the way from a request to an answer.
 """
 
 import inspect
-from collections.abc import Callable, Mapping
+from collections.abc import AsyncIterator, Callable, Mapping
 from dataclasses import dataclass
 from typing import Annotated, Any, Literal
 
@@ -14,6 +14,8 @@ from pydantic import BaseModel, ConfigDict, Field
 
 from service.answers import Answer
 from service.context import Context
+from service.formats import Table
+from service.scans import Scans
 
 
 class Strict(BaseModel):
@@ -52,6 +54,7 @@ class Question:
     tag: str
     body_example: Mapping[str, Any] | None = None
     heavy: bool = False
+    pieces: Callable[[Scans, Context, Any], AsyncIterator[Table]] | None = None  # of a table that is long in the making
 
     @property
     def method(self) -> str:

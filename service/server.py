@@ -1,5 +1,6 @@
 """Runs the application under uvicorn, in this process or in several."""
 
+import importlib.util
 import os
 import subprocess
 import sys
@@ -38,6 +39,9 @@ def _serve(settings: Settings) -> int:
             print(f"sublevel serve: {error}", file=sys.stderr)
             return 2
         _audit(settings.overlay)
+    if settings.scheduler is not None and importlib.util.find_spec("distributed") is None:
+        print("sublevel serve: SUBLEVEL_SCHEDULER needs the package distributed (group dask)", file=sys.stderr)
+        return 2
     uvicorn.run(
         "service.app:build_app",
         factory=True,

@@ -25,4 +25,11 @@ class Settings(BaseSettings):
     max_seconds: float = Field(30.0, gt=0, description="seconds that one computation may take")
     heavy_threads: int = Field(2, ge=1, le=64, description="long computations at the same time, in each worker")
     heavy_queue: int = Field(16, ge=0, description="long computations that may wait, in each worker")
+    scan_workers: int = Field(0, ge=0, le=256, description="processes that solve scans, in each worker; 0: all cores")
+    scheduler: str | None = Field(
+        None, pattern=r"^(tcp|tls|ucx)://", description="address of a Dask scheduler that solves scans instead"
+    )
+    scans_at_once: int = Field(2, ge=1, le=64, description="scans at the same time, in each worker")
+    max_scan_points: int = Field(100_000, ge=1, description="points in one scan")
+    max_scan_seconds: float = Field(900.0, gt=0, description="seconds that one scan may take")
     cache_bytes: int = Field(16_777_216, ge=0, description="memory for answers already given, in each worker")
