@@ -7,6 +7,7 @@ function cancels so well that this takes more than `MOST_CELLS`, only changes of
 `Roots.proved` is False. Stretches within a clearance of a pole are left out of the range.
 """
 
+from collections.abc import Sequence
 from dataclasses import dataclass, replace
 
 import numpy as np
@@ -16,7 +17,8 @@ Array = NDArray[np.float64]
 FINEST = 1e-12  # of the largest abscissa
 ROUNDING = 64 * np.finfo(float).eps
 MOST_HALVINGS = 60
-MOST_CELLS = 200_000
+MOST_CELLS = 50_000
+CLUSTERS = (0.0, 1e-10, 1e-8)  # of the largest abscissa: closer poles are bounded together, so that they may cancel
 SAME_POLE = 1e-14  # relative: closer ones are one pole
 CANCELLED = 1e-13  # of the weights that met at one pole
 
@@ -101,13 +103,14 @@ def every_root(function: Rational, low: float, high: float) -> Roots:
     function = merged(function)
     if not function.pole.size and function.constant == 0.0:
         return Roots((), vanishes=True)
+    clusters = [_clusters(function, width * max(abs(low), abs(high))) for width in CLUSTERS]
     found: list[float] = []
     vanished = 0.0
     for _ in range(MOST_HALVINGS):
         if not cells.size or len(cells) > MOST_CELLS:
             break
         middle, half = cells.mean(axis=1), (cells[:, 1] - cells[:, 0]) / 2
-        value, slope, bend, noise = _about(function, cells, middle)
+        value, slope, bend, noise = _about(function, clusters, cells, middle)
         reach = np.abs(slope) * half + bend * half**2 / 2
         flat = np.abs(value) + reach < noise
         vanished += float(2 * half[flat].sum())
@@ -116,6 +119,7 @@ def every_root(function: Rational, low: float, high: float) -> Roots:
         found += [root for cell in cells[monotone] for root in _crossing(function, cell)]
         undecided = ~none & ~monotone
         small = undecided & (half <= finest)
+        found += [root for cell in _changing(function, cells[small]) for root in _crossing(function, cell)]
         found += [float(at) for at in middle[small & (np.abs(value) <= noise)]]
         halved = cells[undecided & ~small]
         centre = halved.mean(axis=1)
@@ -124,24 +128,58 @@ def every_root(function: Rational, low: float, high: float) -> Roots:
     return Roots(tuple(_distinct(sorted(found), 4 * finest)), vanished > 0.5 * (high - low), not cells.size)
 
 
+@dataclass(frozen=True, slots=True, eq=False)
+class _Clusters:
+    """Poles that lie close together: lowest and highest of each group, sum of weights, sum |weight||pole - middle|."""
+
+    lowest: Array
+    highest: Array
+    weight: Array
+    moment: Array
+
+
+def _clusters(function: Rational, width: float) -> _Clusters:
+    """Group the (rising) poles of a merged function."""
+    starts = np.nonzero(np.diff(function.pole, prepend=-np.inf) > width)[0]
+    if not starts.size:
+        return _Clusters(*(np.zeros(0) for _ in range(4)))
+    ends = np.append(starts[1:], function.pole.size) - 1
+    lowest, highest = function.pole[starts], function.pole[ends]
+    group = np.repeat(np.arange(starts.size), ends - starts + 1)
+    away = np.abs(function.pole - ((lowest + highest) / 2)[group])
+    return _Clusters(
+        lowest,
+        highest,
+        np.add.reduceat(function.weight, starts),
+        np.add.reduceat(np.abs(function.weight) * away, starts),
+    )
+
+
 def _changing(function: Rational, cells: Array) -> Array:
-    """Keep the cells at whose ends the function has different signs, beyond rounding."""
+    """Keep the cells at whose ends the function has different signs."""
     if not cells.size:
         return cells
-    ends = np.stack([function.value(cells[:, 0]), function.value(cells[:, 1])], axis=1)
-    noise = _about(function, cells, cells.mean(axis=1))[3]
-    kept: Array = cells[(ends[:, 0] * ends[:, 1] < 0) & (np.abs(ends).max(axis=1) > noise)]
+    ends = np.sign(function.value(cells.ravel())).reshape(-1, 2)
+    kept: Array = cells[ends[:, 0] * ends[:, 1] <= 0]
     return kept
 
 
-def _about(function: Rational, cells: Array, middle: Array) -> tuple[Array, Array, Array, Array]:
+def _bend(clusters: _Clusters, cells: Array) -> Array:
+    """Bound |f''| within cells: 2|sum of weights|/d^3 + 6 moment/d^4 of each cluster at distance d; inf inside one."""
+    distance = np.maximum(clusters.lowest - cells[:, 1:], cells[:, :1] - clusters.highest)
+    near = np.maximum(distance, 1e-60)
+    bounds: Array = (2 * np.abs(clusters.weight) / near**3 + 6 * clusters.moment / near**4).sum(axis=1)
+    return bounds
+
+
+def _about(
+    function: Rational, clusters: Sequence[_Clusters], cells: Array, middle: Array
+) -> tuple[Array, Array, Array, Array]:
     """Evaluate value and slope in the middle of cells, a bound on |f''| within them, and the value's rounding."""
     gap = function.pole - middle[:, None]
     part = function.weight / gap
-    nearest = np.maximum(function.pole - cells[:, 1:], cells[:, :1] - function.pole)
-    bend = 2 * (np.abs(function.weight) / np.maximum(nearest, 1e-300) ** 3).sum(axis=1)
-    sizes = np.abs(part) * (1 + np.abs(middle[:, None] / gap))
-    noise = ROUNDING * (sizes.sum(axis=1) + abs(function.constant))
+    bend = np.min([_bend(group, cells) for group in clusters], axis=0)
+    noise = ROUNDING * (np.abs(part).sum(axis=1) + abs(function.constant))
     return function.constant + part.sum(axis=1), (part / gap).sum(axis=1), bend, noise
 
 

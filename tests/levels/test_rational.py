@@ -105,3 +105,26 @@ def test_slope_is_the_derivative() -> None:
     step = 1e-6
     quotient = (function.value(2.0 + step) - function.value(2.0 - step)) / (2 * step)
     assert function.slope(2.0) == pytest.approx(quotient, rel=1e-8)
+
+
+def test_nearly_equal_functions_are_told_apart() -> None:
+    """Two sums of poles a kilohertz apart differ by their derivative; all its roots are found, and that is proved.
+
+    1/(a-x)^2 = 2/(b-x)^2 has the roots x = (sqrt2 a +- b)/(sqrt2 +- 1).
+    """
+    a, b, apart = 3.8e8, 3.9e8, 1e-3
+    one = rational([a, b], [1.0, -2.0], clearance=10.0)
+    two = rational([a + apart, b + apart], [1.0, -2.0], clearance=10.0)
+    found = every_root(minus(one, two), 2.0e8, 6.0e8)
+    root = np.sqrt(2)
+    assert found.proved
+    assert found.roots == pytest.approx([(root * a - b) / (root - 1), (root * a + b) / (root + 1)], rel=1e-7)
+
+
+def test_a_search_too_long_says_so(monkeypatch: pytest.MonkeyPatch) -> None:
+    """Beyond the bound on cells only changes of sign are found, and nothing is proved."""
+    monkeypatch.setattr("levels.rational.MOST_CELLS", 2)
+    function = rational([1.0, 3.0, 7.0], [1.0, 1.0, 1.0], 0.1, 1e-3)
+    found = every_root(function, -1.0, 10.0)
+    assert not found.proved
+    assert found.roots == pytest.approx(roots_of_polynomial(function, -1.0, 10.0))
