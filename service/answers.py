@@ -174,6 +174,7 @@ def flat_row(record: Mapping[str, Any]) -> dict[str, Any]:
 
 
 def unit_suffix(unit: str) -> str:
-    """The end of a key that names the unit, as an identifier: "MHz/G" is `_MHz_per_G`; a bare number has none."""
-    words = re.sub(r"[^A-Za-z0-9]+", "_", unit.replace("/", "_per_").replace("^", "").replace("-", "_m")).strip("_")
+    """The end of a key that names the unit, as an identifier: "MHz/G" is `_MHz_per_G`, "s-1" is `_per_s`."""
+    spelt = f"/{unit.removesuffix('-1')}" if unit.endswith("-1") else unit
+    words = re.sub(r"[^A-Za-z0-9]+", "_", spelt.replace("/", "_per_").replace("^", "")).strip("_")
     return f"_{words}" if words and words != "1" else ""

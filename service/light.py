@@ -8,7 +8,7 @@ from pydantic import BeforeValidator, Field
 
 from levels.errors import NotPublished, OutsideValidity
 from levels.lightshift import LARGEST_INTENSITY, solvable
-from levels.notation import shown
+from levels.notation import format_polarisation, shown
 from levels.partners import Doubt, Partners, other_end, partners_of
 from levels.polarisability import LONGEST_NM, SHORTEST_NM
 from levels.quantity import convert, parse_quantity_input
@@ -51,6 +51,7 @@ Intensity = Annotated[float, measure("intensity", "mW/cm2", 0.0, LARGEST_INTENSI
 Power = Annotated[float, measure("power", "mW", 0.0, 1e8), NUMBER_OR_TEXT]
 Waist = Annotated[float, measure("length", "um", 0.1, 1e5), NUMBER_OR_TEXT]
 NAMED = {1: (0.0, 45.0), 0: (90.0, 0.0), -1: (0.0, -45.0)}  # beam angle and ellipticity of each polarisation
+ANGLES = ("beam_angle", "ellipticity", "azimuth")
 A03 = "a0^3"
 
 
@@ -100,10 +101,11 @@ def setting_of(asked: PolarisedAsked, wavelength_nm: float) -> Setting:
     """The light and field that were asked for."""
     angle, ellipticity, azimuth = asked.beam_angle, asked.ellipticity, asked.azimuth
     if asked.polarisation is not None:
-        given = {"beam_angle", "ellipticity", "azimuth"} & asked.model_fields_set
+        given = [name for name in ANGLES if getattr(asked, name) != PolarisedAsked.model_fields[name].default]
         if given:
-            detail = f"polarisation says it all: leave out {', '.join(sorted(given))}"
-            raise Problem("invalid-parameter", detail, parameter="polarisation", allowed="either, not both")
+            detail = f"polarisation says it all: leave out {' and '.join(given)}"
+            value = format_polarisation(asked.polarisation)
+            raise Problem("invalid-parameter", detail, parameter="polarisation", given=value, allowed="either, not both")
         (angle, ellipticity), azimuth = NAMED[asked.polarisation], 0.0
     return make_setting(wavelength_nm, angle, ellipticity, azimuth, asked.field)
 

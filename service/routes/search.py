@@ -85,7 +85,7 @@ class LineColumns(Shape):
     distance_nm: MaybeNumbers = Field(description="wavelength, in the medium asked for, less that asked for")
     distance_GHz: MaybeNumbers = Field(description="frequency of each photon less that asked for")
     width_MHz: MaybeNumbers = Field(description="full natural width of the upper level, Gamma/2pi")
-    einstein_A_s_m1: MaybeNumbers = Field(description="rate of this line alone")
+    einstein_A_per_s: MaybeNumbers = Field(description="rate of this line alone")
     branching: MaybeNumbers = Field(description="fraction of the upper level's decays")
     evidence: Texts = Field(description="of the frequency: checked, recalled, computed")
     source: Texts = Field(description="of the frequency")
@@ -107,7 +107,7 @@ class LevelColumns(Shape):
     term: Texts
     J: Labels
     parity: Texts
-    energy_cm_m1: MaybeNumbers = Field(description="above the ground level")
+    energy_per_cm: MaybeNumbers = Field(description="above the ground level")
     energy_of: Texts = Field(description="the isotope whose energy this is, or natural")
     lifetime_s: MaybeNumbers
     width_MHz: MaybeNumbers
@@ -207,7 +207,7 @@ def line_columns(found: Sequence[Found], wanted: Wanted) -> dict[str, Column]:
         "distance_nm": [one.distance_nm for one in found],
         "distance_GHz": [one.distance_ghz for one in found],
         "width_MHz": [_value(usable(line.upper.width, wanted)) for line in lines],
-        "einstein_A_s_m1": [_value(usable(line.einstein_A, wanted)) for line in lines],
+        "einstein_A_per_s": [_value(usable(line.einstein_A, wanted)) for line in lines],
         "branching": [_value(usable(line.branching, wanted)) for line in lines],
         "evidence": [one.evidence if one else "" for one in centroids],
         "source": [one.source if one else "" for one in centroids],
@@ -259,7 +259,7 @@ def answer_levels(context: Context, path: Mapping[str, str], asked: LevelsAsked)
         "term": [level.term for level in levels],
         "J": [level.twice_J / 2 for level in levels],
         "parity": ["even" if level.parity > 0 else "odd" for level in levels],
-        "energy_cm_m1": [_value(level.energy) for level in levels],
+        "energy_per_cm": [_value(level.energy) for level in levels],
         "energy_of": [level.energy_of for level in levels],
         "lifetime_s": [_value(level.lifetime) for level in levels],
         "width_MHz": [_value(level.width) for level in levels],

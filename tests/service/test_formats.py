@@ -201,9 +201,10 @@ def test_flat_row_moves_units_into_names() -> None:
     """A scalar becomes a column with its unit, one of its uncertainty, and a list becomes text."""
     row = flat_row({"slope": scalar(1.4, 0.1, "MHz/G"), "names": ["a", "b"], "n": 3})
     assert row == {"slope_MHz_per_G": 1.4, "slope_uncertainty_MHz_per_G": 0.1, "names": "a; b", "n": 3}
-    assert [unit_suffix(unit) for unit in ("1", "cm-1", "a0^3", "e*a0", "Hz/G2")] == [
+    assert [unit_suffix(unit) for unit in ("1", "cm-1", "s-1", "a0^3", "e*a0", "Hz/G2")] == [
         "",
-        "_cm_m1",
+        "_per_cm",
+        "_per_s",
         "_a03",
         "_e_a0",
         "_Hz_per_G2",

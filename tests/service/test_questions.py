@@ -2,6 +2,7 @@
 
 import math
 from typing import Any
+from urllib.parse import quote
 
 import pytest
 from httpx2 import Response
@@ -50,6 +51,26 @@ def test_answer_says_what_was_asked_and_what_it_rests_on(client: TestClient, que
         assert source["citation"]
         assert source["evidence"] in ("checked", "recalled", "computed")
         assert source["used_for"]
+
+
+@each_question
+def test_echo_is_a_question(client: TestClient, question: Question) -> None:
+    """The echo with its defaults, asked again, is the same question and gets the same answer."""
+    first = ask_example(client, question).json()
+    echo = dict(first["query"])
+    if question.body_example is not None:
+        second = client.post(question.path, json=echo)
+    else:
+        path = question.path.format_map({name: quote(echo.pop(name), safe="") for name in question.path_names})
+        second = client.get(path, params={name: spelt(value) for name, value in echo.items() if value is not None})
+    assert second.status_code == 200, second.text
+    assert second.json() == first
+
+
+def spelt(value: Any) -> str:
+    if isinstance(value, list):
+        return ",".join(map(str, value))
+    return str(value).lower() if isinstance(value, bool) else str(value)
 
 
 @each_question
