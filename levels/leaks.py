@@ -2,8 +2,8 @@
 
 "Photons" are those that the first, cooling laser makes the atom scatter. Bounds enclose what unknown branching allows;
 levels that the book does not hold are not considered. The time follows from rate equations between the levels with
-stimulated emission, so it depends on the lasers' intensities and detunings; the number of photons does so only through
-off-resonant excitation.
+stimulated emission, so it depends on the lasers' intensities and detunings. The number of photons does so where leaks
+are off-resonant, which saturation of the cycle makes more frequent per photon, or where lasers share an upper state.
 """
 
 from collections.abc import Callable, Sequence
@@ -137,7 +137,7 @@ def row_of(walk: Walk, stop: int, bound: Bound) -> Array:
     options = graph.options[state]
     option: Array | None = bound(options, axis=0) if len(options) else None
     if walk.driven[stop]:
-        light = np.sum([table[state] for table in walk.rates], axis=0)
+        light = walk.leading[state]
         own = 0.0 if option is None or np.isnan(graph.rates[state]) else float(graph.rates[state])
         row: Array = (light + (own * option if own and option is not None else 0.0)) / (light.sum() + own)
         return row

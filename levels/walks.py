@@ -1,10 +1,11 @@
 """Walks of an atom from scattering to scattering: where each photon leaves it, and how many it scatters before loss.
 
 A walk stops at lower states that lasers drive, at dark states, and at states whose branching is unknown. From a driven
-state one scattering leads on, by the lasers' excitation rates and the decays that follow; saturation changes how long
-that takes, not where it leads. A state that lasers reach only off resonance counts as driven when they empty it faster
-than the cycle fills it, else as dark. What is unknown is bounded: the same walks with every unknown decay at its worst
-and at its best, found by policy iteration.
+state one scattering leads on, by the lasers' excitation rates and the decays that follow. Stimulated emission undoes
+excitations without a photon: strong light on the cycle scatters no more, while off resonance it goes on to leak. A
+state that lasers reach only off resonance counts as driven when they empty it faster than the cycle fills it, else as
+dark. What is unknown is bounded: the same walks with every unknown decay at its worst and at its best, found by policy
+iteration.
 """
 
 from collections.abc import Sequence
@@ -30,12 +31,14 @@ class Walk:
 
     `onward` (all states, stops) says where a decay from any state stops next. `moves` (stops, stops) are those of the
     driven stops; dark stops have none. `choices` lists each stop of unknown branching with its options (options,
-    stops). `cooling` is the share of the first laser in what a stop scatters.
+    stops). `cooling` is the share of the first laser in what a stop scatters. `rates` are each laser's excitations,
+    `leading` (n, n) where all of them lead: to an upper state that decays, or by stimulated emission to a lower one.
     """
 
     graph: Graph
     lasers: tuple[Laser, ...]
     rates: tuple[Array, ...]
+    leading: Array
     stops: Indices
     onward: Array
     moves: Array
@@ -130,8 +133,8 @@ def walk_of(
     `emptied` are the states that lasers empty off resonance, `more_stops` states to stop at too.
     """
     tables = light_of(graph, lasers, field_gauss)
-    light = np.sum(tables, axis=0)
-    excited = light.sum(axis=1)
+    decaying, leading = after_stimulated_emission(graph, np.sum(tables, axis=0))
+    excited = leading.sum(axis=1)
     driven = resonant_mask(graph, lasers)
     driven[list(emptied)] = True
     dark = dark_states(graph, dark_after_s) & ~driven
@@ -150,14 +153,31 @@ def walk_of(
         own = 0.0 if np.isnan(graph.rates[state]) else graph.rates[state]
         if driven[state]:
             decays = own * (options[0] @ onward) if len(options) else 0.0
-            moves[row] = (light[state] @ onward + decays) / (excited[state] + own)
-            cooling[row] = tables[0][state].sum() / (excited[state] + own)
+            moves[row] = (leading[state] @ onward + decays) / (excited[state] + own)
+            cooling[row] = tables[0][state] @ decaying / (excited[state] + own)
         elif not dark[state] and not unknown[state]:
             moves[row] = options[0] @ onward
     choices = tuple((row, graph.options[s] @ onward) for row, s in enumerate(stops) if unknown[s])
     places = {int(state): k for k, state in enumerate(stops)}
     marks = (dark[stops], driven[stops])
-    return Walk(graph, tuple(lasers), tuple(tables), stops, onward, moves, *marks, choices, cooling, places)
+    return Walk(graph, tuple(lasers), tuple(tables), leading, stops, onward, moves, *marks, choices, cooling, places)
+
+
+def after_stimulated_emission(graph: Graph, light: Array) -> tuple[Array, Array]:
+    """Compute the chance that a state decays before light takes it down, and the rates (n, n) of where light leads.
+
+    Light that excites l to u with W takes u down with W g_l/g_u. A way back to the same state is no event. An upper
+    state without a known lifetime decays at once.
+    """
+    weights = np.array([state.weight for state in graph.states], dtype=np.float64)
+    down = (light * weights[:, None] / weights[None, :]).T
+    stimulated = down.sum(axis=1)
+    lit = (stimulated > 0) & ~np.isnan(graph.rates)
+    leaving = np.where(lit, graph.rates + stimulated, 1.0)
+    decaying = np.where(lit, graph.rates / leaving, 1.0)
+    swapped = np.where(lit, light / leaving, 0.0) @ down
+    np.fill_diagonal(swapped, 0.0)
+    return decaying, light * decaying + swapped
 
 
 def _onward(graph: Graph, stops: Indices) -> Array:

@@ -32,12 +32,14 @@ def lasers(some: Atom, *names: str, **more: float) -> list[Laser]:
 
 
 def photons_of_walks(graph: Graph, present: list[Laser], count: int, seed: int) -> np.ndarray:
-    """Seeded walks on the graph itself: absorb, decay until a driven or dark state, count the cooling photons."""
+    """Seeded walks on the graph itself: light up and down and decays until a dark state, cooling photons counted."""
     rng = np.random.default_rng(seed)
     tables = [_table(graph, one) for one in present]
     light = np.sum(tables, axis=0)
     driven = resonant_mask(graph, present)
     cooling = driven & (tables[0].sum(axis=1) > 0)
+    weights = np.array([state.weight for state in graph.states])
+    down = (light * weights[:, None] / weights[None, :]).T
     rows: list[np.ndarray] = []
     for state in range(graph.size):
         options, rate = graph.options[state], graph.rates[state]
@@ -49,8 +51,14 @@ def photons_of_walks(graph: Graph, present: list[Laser], count: int, seed: int) 
     counts = np.zeros(count)
     for walk in range(count):
         state = start
+        photon = False
         while rows[state].size:
-            counts[walk] += cooling[state]
+            taken_down = down[state].sum()
+            if taken_down and rng.random() * (taken_down + graph.rates[state]) < taken_down:
+                state = int(rng.choice(graph.size, p=down[state] / taken_down))
+                continue
+            counts[walk] += photon and not driven[state]
+            photon = bool(cooling[state])
             state = int(np.searchsorted(rows[state], rng.random() * rows[state][-1]))
     return counts
 
@@ -128,11 +136,12 @@ def test_hyperfine_photons_against_seeded_walks() -> None:
 
 
 def test_hyperfine_leak_is_the_share_of_the_neighbour() -> None:
-    """Off-resonant leak per photon of a J = 1/2 to 3/2 line: excitation ratio of F' = 2 times its decay to F = 1."""
+    """Weak light on J = 1/2 to 3/2 leaks, per photon, the excitation ratio of F' = 2 times its decay to F = 1."""
     S = named("s_2S1/2", 1, 1, 0.0, 3, A=3400.0)
     P = named("p_2P3/2", 3, -1, 12_800.0, 3, A=85.0)
     some = atom([decay(S, P, 1.0, name="cool")], twice_I=3)
-    found = leaks_of(graph_of(some, True), [make_laser(find(some, "cool"), (4, 6))], DARK_S)
+    weak = make_laser(find(some, "cool"), (4, 6), saturation=1e-12)
+    found = leaks_of(graph_of(some, True), [weak], DARK_S)
     width_mhz = RATE / (2e6 * np.pi)
     ratios = {}
     for F_up, distance_mhz in ((4, 3 * 85.0), (2, 5 * 85.0)):
@@ -142,6 +151,27 @@ def test_hyperfine_leak_is_the_share_of_the_neighbour() -> None:
     expected = sum(ratios[F] * leaves[F] for F in ratios) / (1 + sum(ratios.values()))
     assert found.photons == pytest.approx(1 / expected, rel=1e-9)
     assert [(item.state.twice_F, item.cause, item.fate) for item in found.reached] == [(2, OFF_RESONANT, LOST)]
+
+
+@pytest.mark.parametrize("saturation", [1e-3, 1.0, 30.0, 1e3])
+def test_saturation_leaks_more_per_photon(saturation: float) -> None:
+    """Photons over time is Gamma times the excited population W/(W + 5 W/7 + Gamma); saturation takes photons away.
+
+    Off-resonant excitation is not saturated, so that photons before loss fall by 1 + 5 W/7 Gamma.
+    """
+    S = named("s_2S1/2", 1, 1, 0.0, 3, A=1e8)
+    P = named("p_2P3/2", 3, -1, 12_800.0, 3, A=1000.0)
+    some = atom([decay(S, P, 1.0, name="cool")], twice_I=3)
+    strong, weak = (
+        leaks_of(graph_of(some, True), [make_laser(find(some, "cool"), (4, 6), saturation=s)], DARK_S)
+        for s in (saturation, 1e-9)
+    )
+    assert strong.photons is not None
+    assert strong.seconds is not None
+    assert weak.photons is not None
+    W = RATE / 2 * saturation * 4 / 6 * float(line_strength(1, 3, 3, 4, 6))
+    assert strong.photons / strong.seconds == pytest.approx(RATE * W / (W * 12 / 7 + RATE), rel=1e-3)
+    assert strong.photons == pytest.approx(weak.photons / (1 + 5 / 7 * W / RATE), rel=1e-3)
 
 
 def test_light_that_empties_faster_than_it_fills_is_no_leak() -> None:
