@@ -119,7 +119,7 @@ def check_scan(scan: Scan) -> None:
     if scan.target is not None:
         structure.position(*scan.target)
     for end in (np.min, np.max):
-        solver.scheme(tuple((axis, float(end(axis.values))) for axis in scan.axes))
+        axes_of(solver.scheme(tuple((axis, float(end(axis.values))) for axis in scan.axes)).field_gauss)
 
 
 class Solver:

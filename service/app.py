@@ -64,7 +64,7 @@ def build_app(settings: Settings | None = None) -> Application:
         yield
         app.state.running = None
         heavy.close()
-        scans.close()
+        await scans.close()
 
     api = FastAPI(
         title="Sublevel",

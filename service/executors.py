@@ -5,8 +5,10 @@ not forked: a forked child would hold the server's sockets.
 """
 
 import asyncio
+import importlib
 import multiprocessing
 import os
+import threading
 from collections.abc import Callable
 from concurrent.futures import Executor, ProcessPoolExecutor
 from typing import Any, NamedTuple
@@ -16,6 +18,7 @@ from service.problems import Problem
 from service.settings import Settings
 
 CONNECT_SECONDS = 5.0
+CLOSE_SECONDS = 5.0
 
 
 class Place(NamedTuple):
@@ -48,13 +51,15 @@ class Executors:
         """Give up an executor that broke; the next one asked for is new."""
         if self._place is place:
             self._place = None
-            place.close()
+            threading.Thread(target=place.close, daemon=True).start()
 
     def close(self) -> None:
-        """Drop what waits; what runs comes to its bounded end."""
-        if self._place is not None:
-            self._place.close()
-            self._place = None
+        """Drop what waits, and wait a little for what runs: a process of the pool that stays ends with this one."""
+        place, self._place = self._place, None
+        if place is not None:
+            closing = threading.Thread(target=place.close, daemon=True)
+            closing.start()
+            closing.join(CLOSE_SECONDS)
 
 
 def cores() -> int:
@@ -67,14 +72,13 @@ def _pool(workers: int) -> Place:
         os.environ.setdefault(name, "1")
     spawn = multiprocessing.get_context("spawn")
     pool = ProcessPoolExecutor(workers, mp_context=spawn, initializer=worker.start)
-    return Place(pool, workers, lambda: pool.shutdown(wait=False, cancel_futures=True))
+    return Place(pool, workers, lambda: pool.shutdown(wait=True, cancel_futures=True))
 
 
 def _dask(address: str) -> Place:
-    from distributed import Client
-
+    distributed: Any = importlib.import_module("distributed")
     try:
-        client: Any = Client(address, timeout=CONNECT_SECONDS, set_as_default=False)
+        client = distributed.Client(address, timeout=CONNECT_SECONDS, set_as_default=False)
         width = sum(client.nthreads().values())
     except (OSError, TimeoutError, ValueError) as error:
         raise _away(address, str(error)) from error

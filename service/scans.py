@@ -87,13 +87,17 @@ class Scans:
             return await asyncio.wait_for(asyncio.shield(sent.result), until - time.monotonic())
         except TimeoutError:
             bound = f"{self._seconds:g} s"
-            raise Problem(
-                "took-too-long", f"the scan took more than {bound}", parameter="axes", allowed=bound
-            ) from None
+            detail = f"the scan took more than {bound}"
+            raise Problem("took-too-long", detail, parameter="axes", allowed=bound) from None
+        except asyncio.CancelledError:
+            task = asyncio.current_task()
+            if sent.result.cancelled() and task is not None and not task.cancelling():
+                raise BrokenExecutor("the executor gave a piece up") from None
+            raise
 
-    def close(self) -> None:
+    async def close(self) -> None:
         """End the executor."""
-        self._executors.close()
+        await asyncio.to_thread(self._executors.close)
 
 
 def _submitted(place: Place, scan: Scan, start: int, stop: int) -> _Sent:

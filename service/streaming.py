@@ -1,8 +1,8 @@
 """The way of an answer that is long in the making: rows as they come, with progress, and an end when nobody listens.
 
 NDJSON has one object a line with its `type`: first `meta` (at once), then `row` by row with `progress` between, last
-`end`, or `error` with the problem. In CSV the same stand on lines that begin with `#`, before and between the rows. An
-answer without `end` or `error` was cut off. JSON comes whole, once everything is there.
+`end`, or `error` with the problem (whose own type is its `problem`). In CSV the same stand on lines that begin with
+`#`, before and between the rows. An answer without `end` or `error` was cut off. JSON comes whole, when all is there.
 """
 
 import asyncio
@@ -117,7 +117,8 @@ async def _lines(work: Work, frame: Answer, pieces: AsyncIterator[Table]) -> Asy
         problem = problem_of(error)
         if problem.type.status == 500:
             LOG.error("a stream of %s failed", work.question.name, exc_info=error)
-        yield write("error", orjson.loads(problem.encode(work.question.path, "")))
+        body = orjson.loads(problem.encode(work.question.path, ""))
+        yield write("error", {"problem": body.pop("type"), **body})
     else:
         yield write("end", {"done": done, "points": points, "seconds": round(time.monotonic() - began, 3)})
 

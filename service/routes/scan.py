@@ -1,22 +1,23 @@
 """`scan`: a scheme over a grid of up to three parameters, in rows as they come."""
 
 from collections.abc import AsyncIterator, Mapping
-from typing import Any, Literal
+from typing import Annotated, Any, Literal
 
 import numpy as np
 from numpy.typing import NDArray
-from pydantic import Field
+from pydantic import BeforeValidator, Field
 
 from levels.errors import OutsideValidity
 from levels.grid import COLUMNS, Cell, Piece, Scan, check_scan
+from levels.notation import shown
 from levels.quantity import convert, parse_quantity_input
 from levels.units import CANONICAL, UNITS
 from levels.vary import MOST_AXES, PARAMETERS, Axis
 from service.answers import Answer, unit_suffix
-from service.beams import Number, SchemeAsked
+from service.beams import SchemeAsked
 from service.context import Context
 from service.formats import Column, Table
-from service.parameters import Name
+from service.parameters import NUMBER_OR_TEXT, Name
 from service.problems import Problem
 from service.question import Question, Strict
 from service.routes.scheme import EXAMPLE
@@ -62,17 +63,26 @@ MISSING = "does not exist at this point: nothing changes, or nothing leaves"
 LISTED = 100_000
 
 
+def _value(given: Any) -> float | str:
+    if isinstance(given, bool) or not isinstance(given, (int, float, str)):
+        raise OutsideValidity("value", shown(str(given)), "a number in the parameter's unit, or text with its unit")
+    return given
+
+
+Value = Annotated[Any, BeforeValidator(_value), NUMBER_OR_TEXT]  # which unit it is in depends on the parameter
+
+
 class GridAxis(Strict):
     """One axis: a parameter and its values, in its own unit or as text with a unit."""
 
     parameter: ParameterName = Field(description="what changes; the last axis runs fastest")
     beam: Name | None = Field(None, description="whose it is, where it is a beam's")
     plate: int = Field(1, ge=1, le=10, strict=True, description="of `plate`: which of the beam's wave plates, from 1")
-    start: Number | str | None = Field(None, description="first value")
-    stop: Number | str | None = Field(None, description="last value, included")
+    start: Value | None = Field(None, description="first value")
+    stop: Value | None = Field(None, description="last value, included")
     points: int | None = Field(None, ge=1, le=1_000_000, strict=True, description="how many values")
     logarithmic: bool = Field(False, description="equal ratios instead of equal steps")
-    values: list[Number | str] | None = Field(
+    values: list[Value] | None = Field(
         None, min_length=1, max_length=LISTED, description="the values themselves, instead"
     )
 
