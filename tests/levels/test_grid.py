@@ -10,9 +10,9 @@ import pytest
 from levels.cycling import photons_before_leaving
 from levels.errors import OutsideValidity
 from levels.geometry import axes_of, resolve
+from levels.grid import COLUMNS, Scan, Solver, check_scan, solve_points
 from levels.jones import plate
 from levels.pumping import prepare, pump, solve
-from levels.grid import COLUMNS, Scan, Solver, check_scan, solve_points
 from levels.setup import BeamSetup, Optics, Setup, Share, Tuning, build
 from levels.vary import PARAMETERS, Axis
 from tests.levels.pumping_records import CA40, RB87_D1, simple_atom
