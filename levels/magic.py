@@ -23,6 +23,8 @@ Array = NDArray[np.float64]
 UNKNOWNS = ("wavelength", "ellipticity", "azimuth", "beam_angle", "field")
 INSENSITIVE_SHARE = 1e-3
 SAMPLES = 2001
+DOUBTED = 129  # of these samples, the uncertainty is looked at
+SURE = 2.0  # standard uncertainties
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -69,7 +71,7 @@ class Solution:
 
 @dataclass(frozen=True, slots=True)
 class Found:
-    """Every solution, or `why_none`; `proved` is False where the search could not be finished."""
+    """Every solution of the sums, or `why_none`; `proved` is False where the search could not be finished."""
 
     solutions: tuple[Solution, ...]
     why_none: str = ""
@@ -108,7 +110,35 @@ def _in_range(
         return Found((), "the difference is zero at every wavelength: these two shift alike in this light")
     settings = [replace(setting, wavelength_nm=MHZ_NM / root) for root in sorted(roots.roots, reverse=True)]
     found = tuple(solution(lower, upper, at, "wavelength") for at in settings)
-    return Found(found, "" if found else _why_no_root(function, low, high), roots.proved)
+    if found:
+        return Found(found, "", roots.proved)
+    light = [np.linspace(start, end, DOUBTED) for start, end in stretches(function, low, high)]
+    doubt = not_excluded(lower, upper, setting, np.concatenate([*light, np.zeros(0)]))
+    return Found((), _why_no_root(function, low, high) + doubt, roots.proved)
+
+
+def not_excluded(lower: Side | None, upper: Side, setting: Setting, light_mhz: Array) -> str:
+    """Say where the uncertainty of the difference leaves room for a zero that the sums do not have; else nothing."""
+    if not light_mhz.size:
+        return ""
+    two, one = upper.at(setting.field_gauss), None if lower is None else lower.at(setting.field_gauss)
+    value = two.rational(list(setting.fractions)).value(light_mhz)
+    if one is not None:
+        value = value - one.rational(list(setting.fractions)).value(light_mhz)
+    spread = _doubt(one, two, light_mhz, setting.fractions).uncertainty
+    if np.any(np.isnan(spread)):
+        return "; how far the sums are off is not known, so that a solution is not excluded"
+    k = int(np.argmax(spread / np.maximum(np.abs(value), 1e-300)))
+    if SURE * spread[k] < abs(value[k]):
+        return ""
+    where = f"{value[k]:.4g} with an uncertainty of {spread[k]:.2g} a0^3 at {MHZ_NM / light_mhz[k]:.6g} nm"
+    return f"; it is {where}, so that a solution is not excluded"
+
+
+def _doubt(one: Response | None, two: Response, light_mhz: Array, fractions: Array) -> Doubt:
+    if one is None:
+        return doubt_of_sublevel(two, light_mhz, fractions)
+    return doubt_of_difference(two, one, light_mhz, fractions)
 
 
 def _why_no_root(function: Rational, low: float, high: float) -> str:
@@ -135,9 +165,7 @@ def solution(lower: Side | None, upper: Side, setting: Setting, unknown: str) ->
     slopes = slopes_at(lower, upper, setting)
     minus_, none, plus = difference(lower, upper, setting)
     nu, fractions = np.array([setting.frequency_mhz]), setting.fractions
-    doubt: Doubt = (
-        doubt_of_sublevel(two, nu, fractions) if one is None else doubt_of_difference(two, one, nu, fractions)
-    )
+    doubt = _doubt(one, two, nu, fractions)
     common = float(fractions @ (two if one is None else one).by_drive(nu)[:, 0])
     vector, tensor = float(plus - minus_) / 2, float(none - (plus + minus_) / 2)
     scale = INSENSITIVE_SHARE * abs(common) if one is not None else INSENSITIVE_SHARE

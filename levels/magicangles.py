@@ -13,7 +13,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from levels.insensitive import field_grid, insensitive
-from levels.magic import Found, Side, difference, solution
+from levels.magic import Found, Side, difference, not_excluded, solution
 from levels.setting import Setting
 from levels.sublevels import constants_of
 
@@ -113,10 +113,12 @@ def _found(
     k = int(np.argmin(np.abs(sample)))
     unit = "G" if unknown == "field" else "degrees"
     spoken = unknown.replace("_", " ")
+    closest = replace(setting, **{name: float(grid[k])})
+    doubt = not_excluded(lower, upper, closest, np.array([setting.frequency_mhz]))
     return Found(
         (),
         f"the difference runs from {sample.min():.4g} to {sample.max():.4g} a0^3 over the whole range of the {spoken}; "
-        f"it comes closest to zero with {abs(sample[k]):.4g} a0^3 at {grid[k]:.6g} {unit}",
+        f"it comes closest to zero with {abs(sample[k]):.4g} a0^3 at {grid[k]:.6g} {unit}{doubt}",
     )
 
 

@@ -84,8 +84,10 @@ class MagicAnswered(Tabular):
     upper_level: str
     solved_for: str
     unit: str = Field(description="of `uncertainty`")
-    why_none: str = Field(description="why there is no solution; empty when there is one")
-    proved: bool = Field(description="whether every solution of the range is listed")
+    why_none: str = Field(
+        description="why there is no solution, and whether uncertainty leaves room for one; empty when there is one"
+    )
+    proved: bool = Field(description="whether every zero that the sums over the catalogue's lines have is listed")
     reasons: Texts = Field(description="why uncertainties are null")
     columns: MagicColumns
 

@@ -135,6 +135,22 @@ def test_no_solution_says_why() -> None:
     assert found.solutions == ()
     assert "stays positive" in found.why_none
     assert "1100 nm" in found.why_none
+    assert "not excluded" not in found.why_none
+
+
+@pytest.mark.parametrize(
+    ("static", "said"),
+    [((320.1, 0.6), False), ((320.1, 400.0), True), (None, True)],
+)
+def test_no_solution_that_uncertainty_allows_is_not_ruled_out(static: tuple[float, float] | None, said: bool) -> None:
+    """A sum that keeps its sign rules a tune-out out only where it is surer than it is large."""
+    values = {} if static is None else {GROUND.name: quantity(*static)}
+    side = Side(partners_of(replace(RB87, static_polarisability=values), GROUND))  # type: ignore[arg-type]
+    found = tune_outs(side, make_setting(1064.0), 1000.0, 1100.0)
+    assert found.solutions == ()
+    assert ("not excluded" in found.why_none) == said
+    angles = azimuths(None, Side(side.partners, (4, 4)), make_setting(1064.0, 90.0, 20.0))
+    assert ("not excluded" in angles.why_none) == said
 
 
 def test_twins_are_alike_at_every_wavelength() -> None:

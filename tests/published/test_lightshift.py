@@ -84,6 +84,14 @@ def test_vector_shift_vanishes_for_linear_light(book: Catalogue) -> None:
     assert "every wavelength" in found.why_none
 
 
+def test_the_clock_wavelength_is_not_ruled_out(book: Catalogue) -> None:
+    """Our sums for Sr have no zero within 790 to 840 nm, where 813.428 nm is measured (Ludlow 2008): they say so."""
+    pair = Side(side_of(book, "88Sr", "5s2_1S0")), Side(side_of(book, "88Sr", "5s.5p_3P0"))
+    found = magic_wavelengths(*pair, LINEAR, 790.0, 840.0)
+    assert found.solutions == ()
+    assert "not excluded" in found.why_none
+
+
 # Rows that the catalogue's lines cannot give
 
 
