@@ -12,19 +12,18 @@ from levels.beams import LARGEST_INTENSITY, LARGEST_OFFSET_MHZ
 from levels.driven import LARGEST_BEAMS
 from levels.errors import OutsideValidity
 from levels.notation import format_half, parse_component, shown
-from service.measures import _measure
-from service.parameters import NUMBER_OR_TEXT, FieldGauss, Name, PolarisationName, Sublevel
+from service.parameters import NUMBER_OR_TEXT, FieldGauss, Name, PolarisationName, Sublevel, measure
 from service.question import Computed, Strict
 
 MOST_PLATES = 10
 MOST_SHARES = 400
 Number = Annotated[float, StrictNumber(), Field(allow_inf_nan=False)]
-Degrees = Annotated[float, _measure("angle", "deg", -36000.0, 36000.0), NUMBER_OR_TEXT]
-Megahertz = Annotated[float, _measure("frequency", "MHz", -LARGEST_OFFSET_MHZ, LARGEST_OFFSET_MHZ), NUMBER_OR_TEXT]
-Terahertz = Annotated[float, _measure("frequency", "THz", 1e-9, 1e5), NUMBER_OR_TEXT]
-Intensity = Annotated[float, _measure("intensity", "mW/cm2", 0.0, LARGEST_INTENSITY), NUMBER_OR_TEXT]
-Milliwatts = Annotated[float, _measure("power", "mW", 0.0, LARGEST_INTENSITY), NUMBER_OR_TEXT]
-Millimetres = Annotated[float, _measure("length", "mm", 1e-4, 1e5), NUMBER_OR_TEXT]
+Degrees = Annotated[float, measure("angle", "deg", -36000.0, 36000.0), NUMBER_OR_TEXT]
+Megahertz = Annotated[float, measure("frequency", "MHz", -LARGEST_OFFSET_MHZ, LARGEST_OFFSET_MHZ), NUMBER_OR_TEXT]
+Terahertz = Annotated[float, measure("frequency", "THz", 1e-9, 1e5), NUMBER_OR_TEXT]
+Intensity = Annotated[float, measure("intensity", "mW/cm2", 0.0, LARGEST_INTENSITY), NUMBER_OR_TEXT]
+Milliwatts = Annotated[float, measure("power", "mW", 0.0, LARGEST_INTENSITY), NUMBER_OR_TEXT]
+Millimetres = Annotated[float, measure("length", "mm", 1e-4, 1e5), NUMBER_OR_TEXT]
 Triple = Annotated[list[Number], Field(min_length=3, max_length=3)]
 
 
@@ -136,7 +135,7 @@ class BeamAsked(Aimed):
     saturation: Number | None = Field(None, ge=0, le=1e12, description="instead: I/I_sat of a component of strength 1")
     power: Milliwatts | None = Field(None, description="instead: power in mW or with a unit, with `waist`")
     waist: Millimetres | None = Field(None, description="1/e2 radius in mm or with a unit; the peak intensity counts")
-    linewidth: Annotated[float, _measure("frequency", "MHz", 0.0, LARGEST_OFFSET_MHZ), NUMBER_OR_TEXT] = Field(
+    linewidth: Annotated[float, measure("frequency", "MHz", 0.0, LARGEST_OFFSET_MHZ), NUMBER_OR_TEXT] = Field(
         0.0, description="full width of the laser's line, in MHz or with a unit"
     )
     wanted: PolarisationName | None = Field(

@@ -4,44 +4,21 @@ from collections.abc import Iterable, Mapping
 from math import isnan
 from typing import Annotated, Any
 
-from pydantic import BeforeValidator, Field
+from pydantic import Field
 
-from levels.errors import NotPublished, OutsideValidity
+from levels.errors import NotPublished
 from levels.lightshift import LARGEST_INTENSITY, solvable
-from levels.notation import format_polarisation, shown
+from levels.notation import format_polarisation
 from levels.partners import Doubt, Partners, other_end, partners_of
 from levels.polarisability import LONGEST_NM, SHORTEST_NM
-from levels.quantity import convert, parse_quantity_input
 from levels.setting import Setting, make_setting
-from levels.units import CANONICAL
 from service.answers import Used, scalar
 from service.context import Context
 from service.inputs import level_inputs
-from service.parameters import NUMBER_OR_TEXT, FieldGauss, PolarisationName
+from service.parameters import NUMBER_OR_TEXT, FieldGauss, PolarisationName, measure
 from service.problems import Problem
 from service.question import Computed
 from service.schemas import Scalar, Shape, Texts
-
-
-def measure(dimension: str, unit: str, low: float, high: float) -> BeforeValidator:
-    """Reads a number as it stands, or text with any unit of the dimension to twelve digits, between two bounds."""
-    allowed = f"from {low:.12g} to {high:.12g} {unit}, or with its unit"
-
-    def read(given: Any) -> float:
-        if isinstance(given, bool) or not isinstance(given, (str, int, float)):
-            raise OutsideValidity(dimension, shown(str(given)), allowed)
-        text = (given if isinstance(given, str) else repr(given)).replace("e ", "e+").replace("E ", "E+").strip()
-        try:
-            value = float(text)
-        except ValueError:
-            canonical = parse_quantity_input(text, dimension, unit)
-            value = float(f"{convert(canonical, CANONICAL[dimension], unit):.12g}")
-        if not low <= value <= high:
-            raise OutsideValidity(dimension, shown(str(given)), allowed)
-        return value
-
-    return BeforeValidator(read)
-
 
 Wavelength = Annotated[float, measure("length", "nm", SHORTEST_NM, LONGEST_NM), NUMBER_OR_TEXT]
 BeamAngle = Annotated[float, measure("angle", "deg", 0.0, 180.0), NUMBER_OR_TEXT]
@@ -104,8 +81,10 @@ def setting_of(asked: PolarisedAsked, wavelength_nm: float) -> Setting:
         given = [name for name in ANGLES if getattr(asked, name) != PolarisedAsked.model_fields[name].default]
         if given:
             detail = f"polarisation says it all: leave out {' and '.join(given)}"
-            value = format_polarisation(asked.polarisation)
-            raise Problem("invalid-parameter", detail, parameter="polarisation", given=value, allowed="either, not both")
+            named = format_polarisation(asked.polarisation)
+            raise Problem(
+                "invalid-parameter", detail, parameter="polarisation", given=named, allowed="one or the other"
+            )
         (angle, ellipticity), azimuth = NAMED[asked.polarisation], 0.0
     return make_setting(wavelength_nm, angle, ellipticity, azimuth, asked.field)
 

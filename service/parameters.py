@@ -36,21 +36,28 @@ def _plus(text: str) -> str:
     return text.replace("e ", "e+").replace("E ", "E+")
 
 
-def _reader(dimension: str, unit: str, low: float, high: float) -> BeforeValidator:
-    """Reads a number with an optional unit, between two bounds, into one unit of its dimension."""
+def measure(dimension: str, unit: str, low: float, high: float) -> BeforeValidator:
+    """Reads a number in `unit`, or text with any unit of the dimension, between two bounds in `unit`."""
     allowed = f"from {low:.12g} to {high:.12g} {unit}"
 
     def read(given: Any) -> float:
         if isinstance(given, str) and given.isascii() and given.replace(".", "", 1).isdigit() and len(given) < 25:
             value = float(given)  # a plain number, as programs send it, need not be taken apart
         else:
-            canonical = parse_quantity_input(_plus(_text(given, dimension, allowed)), dimension, unit)
-            value = canonical if unit == CANONICAL[dimension] else convert(canonical, CANONICAL[dimension], unit)
+            value = _in_unit(_plus(_text(given, dimension, allowed)), dimension, unit)
         if not low <= value <= high:
             raise OutsideValidity(dimension, shown(str(given)), allowed)
         return value
 
     return BeforeValidator(read)
+
+
+def _in_unit(text: str, dimension: str, unit: str) -> float:
+    canonical = parse_quantity_input(text, dimension, unit)
+    try:
+        return float(text)  # in the unit already: a journey through another would change its last digit
+    except ValueError:
+        return float(f"{convert(canonical, CANONICAL[dimension], unit):.15g}")  # 1.064 um are 1064 nm
 
 
 HALF = "[+-]?[0-9]{1,3}(/2|\\.[05])?"
@@ -70,16 +77,16 @@ FIELD = (-LARGEST_FIELD_GAUSS, LARGEST_FIELD_GAUSS)
 UP_TO_FIELD = (1e-6, LARGEST_FIELD_GAUSS)
 ANY_MHZ, SPREAD_MHZ, TOLERANCE_MHZ = (-1e9, 1e9), (0.0, 1e9), (1e-9, 1e6)
 INTENSITY, SPEED, GRADIENT, LENGTH, DEPTH = (1e-12, 1e12), (-1e6, 1e6), (1e-6, 1e6), (1e-6, 1e6), (1e-6, 1e9)
-FieldGauss = Annotated[float, _reader("field", "G", *FIELD), _number_schema(*FIELD)]
-LargestField = Annotated[float, _reader("field", "G", *UP_TO_FIELD), _number_schema(*UP_TO_FIELD)]
-SplittingMhz = Annotated[float, _reader("frequency", "MHz", *ANY_MHZ), _number_schema(*ANY_MHZ)]
-SpreadMhz = Annotated[float, _reader("frequency", "MHz", *SPREAD_MHZ), _number_schema(*SPREAD_MHZ)]
-ToleranceMhz = Annotated[float, _reader("frequency", "MHz", *TOLERANCE_MHZ), _number_schema(*TOLERANCE_MHZ)]
-IntensityMwPerCm2 = Annotated[float, _reader("intensity", "mW/cm2", *INTENSITY), _number_schema(*INTENSITY)]
-VelocityMPerS = Annotated[float, _reader("velocity", "m/s", *SPEED), _number_schema(*SPEED)]
-GradientGaussPerCm = Annotated[float, _reader("gradient", "G/cm", *GRADIENT), _number_schema(*GRADIENT)]
-LengthCm = Annotated[float, _reader("length", "cm", *LENGTH), _number_schema(*LENGTH)]
-DepthMicrokelvin = Annotated[float, _reader("temperature", "uK", *DEPTH), _number_schema(*DEPTH)]
+FieldGauss = Annotated[float, measure("field", "G", *FIELD), _number_schema(*FIELD)]
+LargestField = Annotated[float, measure("field", "G", *UP_TO_FIELD), _number_schema(*UP_TO_FIELD)]
+SplittingMhz = Annotated[float, measure("frequency", "MHz", *ANY_MHZ), _number_schema(*ANY_MHZ)]
+SpreadMhz = Annotated[float, measure("frequency", "MHz", *SPREAD_MHZ), _number_schema(*SPREAD_MHZ)]
+ToleranceMhz = Annotated[float, measure("frequency", "MHz", *TOLERANCE_MHZ), _number_schema(*TOLERANCE_MHZ)]
+IntensityMwPerCm2 = Annotated[float, measure("intensity", "mW/cm2", *INTENSITY), _number_schema(*INTENSITY)]
+VelocityMPerS = Annotated[float, measure("velocity", "m/s", *SPEED), _number_schema(*SPEED)]
+GradientGaussPerCm = Annotated[float, measure("gradient", "G/cm", *GRADIENT), _number_schema(*GRADIENT)]
+LengthCm = Annotated[float, measure("length", "cm", *LENGTH), _number_schema(*LENGTH)]
+DepthMicrokelvin = Annotated[float, measure("temperature", "uK", *DEPTH), _number_schema(*DEPTH)]
 
 
 _parse_sublevel = lru_cache(4096)(parse_sublevel)

@@ -15,8 +15,7 @@ from service.answers import Answer
 from service.beams import SchemeAsked
 from service.context import Context
 from service.formats import Column, Table
-from service.measures import _measure
-from service.parameters import NUMBER_OR_TEXT
+from service.parameters import NUMBER_OR_TEXT, measure
 from service.polarised import columns, sublevel_columns
 from service.problems import Problem
 from service.question import Question, Strict
@@ -24,7 +23,7 @@ from service.routes.scheme import EXAMPLE
 from service.schemas import Labels, Numbers, Shape, Tabular, Texts
 from service.setups import laboratory, stretched, used_by, without_uncertainty
 
-Microseconds = Annotated[float, _measure("time", "us", 0.0, 1e12), NUMBER_OR_TEXT]
+Microseconds = Annotated[float, measure("time", "us", 0.0, 1e12), NUMBER_OR_TEXT]
 COLUMNS = 5
 
 

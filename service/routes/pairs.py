@@ -11,8 +11,8 @@ from service.answers import DOUBTED, Answer
 from service.context import Context
 from service.formats import Column, Table
 from service.inputs import level_inputs
-from service.light import PolarisedAsked, Wavelength, light_inputs, light_warnings, measure, partners, setting_of
-from service.parameters import NUMBER_OR_TEXT, FieldGauss, LargestField, Name
+from service.light import PolarisedAsked, Wavelength, light_inputs, light_warnings, partners, setting_of
+from service.parameters import NUMBER_OR_TEXT, FieldGauss, LargestField, Name, measure
 from service.question import Question
 from service.schemas import Labels, MaybeNumbers, Numbers, Shape, Tabular, Texts
 

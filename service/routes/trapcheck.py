@@ -11,8 +11,7 @@ from service.answers import Answer
 from service.beams import FieldVector, LightAsked, Triple, as_field
 from service.context import Context
 from service.formats import Table
-from service.measures import _measure
-from service.parameters import NUMBER_OR_TEXT
+from service.parameters import NUMBER_OR_TEXT, measure
 from service.polarised import columns, plain
 from service.question import Question
 from service.schemas import Scalar, Shape, Tabular, Texts
@@ -27,7 +26,7 @@ class TrapcheckAsked(LightAsked):
     field: Annotated[FieldVector, BeforeValidator(as_field)] = Field(
         FieldVector(vector=[0.0, 0.0, 0.0]), description="field besides that of the coils: [x, y, z] in gauss"
     )
-    gradient: Annotated[float, _measure("gradient", "G/cm", -LARGEST_GRADIENT, LARGEST_GRADIENT), NUMBER_OR_TEXT] = (
+    gradient: Annotated[float, measure("gradient", "G/cm", -LARGEST_GRADIENT, LARGEST_GRADIENT), NUMBER_OR_TEXT] = (
         Field(description="of the field along the coils' axis, in G/cm or with a unit; its sign is the current's sense")
     )
     coil_axis: Triple = Field([0.0, 0.0, 1.0], description="axis of the coils")
