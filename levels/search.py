@@ -144,8 +144,16 @@ class LevelWanted:
     max_lifetime_s: float | None = None
 
 
-def find_levels(atoms: Iterable[Atom], wanted: LevelWanted) -> list[Level]:
-    """The levels that are wanted, atom by atom by energy; one without a value that is bounded is left out."""
+def find_levels(atoms: Sequence[Atom], wanted: LevelWanted) -> list[Level]:
+    """The levels that are wanted, atom by atom by energy; one without a value that is bounded is left out.
+
+    A name or term that no level of any of the atoms has raises UnknownName with the nearest.
+    """
+    if wanted.name:
+        _check_name(atoms, wanted.name)
+    terms = {level.term.casefold(): level.term for atom in atoms for level in atom.levels}
+    if wanted.term and wanted.term.casefold() not in terms:
+        raise UnknownName("term", wanted.term, nearest(wanted.term, terms.values()))
     found = []
     for atom in atoms:
         fitting = [level for level in atom.levels if _level_fits(level, atom, wanted)]

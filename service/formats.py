@@ -62,6 +62,12 @@ class Table:
         return len(next(iter(self.columns.values()))) if self.columns else 0
 
 
+def with_reasons(columns: Mapping[str, Column], reasons: Mapping[str, str]) -> Table:
+    """A table of these columns that gives the reason of every one that holds null."""
+    nulls = (name for name, column in columns.items() if not isinstance(column, np.ndarray) and None in column)
+    return Table(columns, {name: reasons[name] for name in nulls})
+
+
 def choose(asked: str | None, accept: str) -> Representation:
     """The representation of an answer: `format` if given, else the best match of the Accept header, else JSON."""
     if asked is not None:

@@ -22,7 +22,7 @@ from service.book import (
     zip_of,
 )
 from service.context import Context
-from service.formats import etag, etag_matches
+from service.formats import etag, etag_matches, with_reasons
 from service.problems import Problem
 from service.question import Asked, Question
 from service.schemas import Half, MaybeNumbers, Numbers, Shape, Tabular, Texts
@@ -135,7 +135,8 @@ def answer_book(context: Context, path: Mapping[str, str], asked: BookAsked) -> 
         "lines": line_rows(catalogue),
         "publications": [{**row, "csl": dict(publications[row["id"]].csl)} for row in publication_rows(publications)],
     }
-    return Answer(content, table_of(value_rows(catalogue)))
+    values = table_of(value_rows(catalogue)).columns
+    return Answer(content, with_reasons(values, {"uncertainty": "none is stated"}))
 
 
 async def book_zip(request: Request) -> Response:

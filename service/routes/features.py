@@ -15,7 +15,7 @@ from levels.quantity import Quantity
 from levels.records import Line
 from service.answers import Answer, uncertainty_columns
 from service.context import Context
-from service.formats import Column, Table
+from service.formats import with_reasons
 from service.inputs import line_inputs, line_warnings
 from service.measures import Kelvin
 from service.parameters import FieldGauss, Name
@@ -25,6 +25,18 @@ from service.schemas import MaybeNumbers, Numbers, Shape, Tabular, Texts
 
 NO_WIDTH = "the lifetime of the upper level is not in the catalogue"
 OTHER_CENTROID = "the frequency is not known for this isotope itself"
+NO_UNCERTAINTY = "an input states no uncertainty"
+REASONS = {
+    "offset_MHz": OTHER_CENTROID,
+    "offset_uncertainty_MHz": NO_UNCERTAINTY,
+    "own_offset_uncertainty_MHz": NO_UNCERTAINTY,
+    "frequency_THz": "the frequency of this line's centroid is not in the catalogue",
+    "frequency_uncertainty_THz": NO_UNCERTAINTY,
+    "absorption": "weak light has no crossovers",
+    "natural_width_MHz": NO_WIDTH,
+    "power_width_MHz": NO_WIDTH,
+    "voigt_width_MHz": NO_WIDTH,
+}
 COLUMNS_OF_FEATURES = 18
 
 
@@ -159,10 +171,9 @@ def answer_features(context: Context, path: Mapping[str, str], asked: FeaturesAs
     excludes = list(
         dict.fromkeys(f"{item.sample.isotope.name}: {name}" for item in cell.found for name in item.excludes)
     )
-    table = Table(columns, _missing(columns))
     return Answer(
         content_of_cell(cell),
-        table,
+        with_reasons(columns, REASONS),
         used=used_of_cell(cell),
         warnings=warnings_of_cell(cell, asked),
         uncertainty_excludes=excludes,
@@ -201,20 +212,6 @@ def _rows(found: Features, dip: Any, reference: Line, asked: FeaturesAsked) -> d
 
 def _joined(own: float | None, other: float | None, scale: float = 1.0) -> float | None:
     return None if own is None or other is None else float(np.hypot(own, other)) * scale
-
-
-def _missing(columns: Mapping[str, Column]) -> dict[str, str]:
-    reasons = {
-        "offset_MHz": OTHER_CENTROID,
-        "offset_uncertainty_MHz": "an input states no uncertainty",
-        "own_offset_uncertainty_MHz": "an input states no uncertainty",
-        "frequency_THz": "the frequency of this line's centroid is not in the catalogue",
-        "frequency_uncertainty_THz": "an input states no uncertainty",
-        "natural_width_MHz": NO_WIDTH,
-        "power_width_MHz": NO_WIDTH,
-        "voigt_width_MHz": NO_WIDTH,
-    }
-    return {name: reason for name, reason in reasons.items() if all(item is None for item in columns[name])}
 
 
 def content_of_cell(cell: Cell) -> dict[str, Any]:

@@ -11,9 +11,9 @@ from levels.notation import nearest, shown
 from levels.quantity import Quantity
 from levels.records import Atom, Level
 from levels.search import Found, LevelWanted, Target, Wanted, find_levels, find_lines, usable
-from service.answers import Answer
+from service.answers import NOT_IN_CATALOGUE, Answer
 from service.context import Context
-from service.formats import Column, Table
+from service.formats import Column, with_reasons
 from service.parameters import Half, Name
 from service.question import Asked, Question
 from service.schemas import Labels, MaybeNumbers, Numbers, Shape, Tabular, Texts
@@ -24,6 +24,17 @@ Positive = Annotated[float, Field(gt=0, le=1e12)]
 Multipole = Literal["E1", "M1", "E2", "M2", "E3"]
 SPECIES = Field("", max_length=400, description="only these, by commas: `Rb,Ca+` (the plus as %2B)", examples=["Rb,K"])
 ISOTOPES = "each line once, of the isotope that shifts count from, or of every isotope"
+DISTANCES = ("distance_nm", "distance_GHz")
+NOT_STATED = "not in the catalogue, or its publication states none"
+LINE_REASONS = {
+    "air_wavelength_nm": "the dispersion of air is known from 230 to 1700 nm",
+    "frequency_THz": NOT_IN_CATALOGUE,
+    "frequency_uncertainty_THz": NOT_STATED,
+    "width_MHz": NOT_IN_CATALOGUE,
+    "einstein_A_per_s": NOT_IN_CATALOGUE,
+    "branching": NOT_IN_CATALOGUE,
+}
+LEVEL_REASONS = dict.fromkeys(("energy_per_cm", "lifetime_s", "width_MHz", "g_J"), NOT_IN_CATALOGUE)
 LIMIT = Field(200, ge=1, le=5000, description="most rows")
 
 
@@ -80,7 +91,7 @@ class LineColumns(Shape):
     wavelength_nm: Numbers = Field(description="in vacuum, of each photon; nominal where no frequency is known")
     air_wavelength_nm: MaybeNumbers = Field(description="in standard air, 230 to 1700 nm")
     frequency_THz: MaybeNumbers = Field(description="between hyperfine centroids; for two photons their sum")
-    frequency_uncertainty_MHz: MaybeNumbers
+    frequency_uncertainty_THz: MaybeNumbers
     frequency_of: Texts = Field(description="the isotope whose frequency this is, or natural")
     distance_nm: MaybeNumbers = Field(description="wavelength, in the medium asked for, less that asked for")
     distance_GHz: MaybeNumbers = Field(description="frequency of each photon less that asked for")
@@ -178,10 +189,10 @@ def answer_lines(context: Context, path: Mapping[str, str], asked: LinesAsked) -
         target = Target(asked.near, within, asked.unit, asked.medium == "air")
     found = find_lines(atoms_of(context, asked), wanted, target)
     shown_lines = found[: asked.limit]
-    missing = {} if target else dict.fromkeys(("distance_nm", "distance_GHz"), "nothing was asked to be near")
+    reasons = {**LINE_REASONS, **({} if target else dict.fromkeys(DISTANCES, "nothing was asked to be near"))}
     return Answer(
         {"found": len(found)},
-        Table(line_columns(shown_lines, wanted), missing),
+        with_reasons(line_columns(shown_lines, wanted), reasons),
         used=[item for one in shown_lines for item in _used(one, wanted)],
         warnings=_cut(found, asked.limit),
     )
@@ -202,7 +213,9 @@ def line_columns(found: Sequence[Found], wanted: Wanted) -> dict[str, Column]:
         "wavelength_nm": [one.vacuum_nm for one in found],
         "air_wavelength_nm": [one.air_nm for one in found],
         "frequency_THz": [one.value * 1e-6 if one else None for one in centroids],
-        "frequency_uncertainty_MHz": [one.uncertainty if one else None for one in centroids],
+        "frequency_uncertainty_THz": [
+            one.uncertainty * 1e-6 if one and one.uncertainty is not None else None for one in centroids
+        ],
         "frequency_of": [line.centroid_isotope for line in lines],
         "distance_nm": [one.distance_nm for one in found],
         "distance_GHz": [one.distance_ghz for one in found],
@@ -266,7 +279,9 @@ def answer_levels(context: Context, path: Mapping[str, str], asked: LevelsAsked)
         "g_J": [_value(level.g_J) for level in levels],
     }
     used = [item for level in levels for item in _level_used(level)]
-    return Answer({"found": len(found)}, Table(columns), used=used, warnings=_cut(found, asked.limit))
+    return Answer(
+        {"found": len(found)}, with_reasons(columns, LEVEL_REASONS), used=used, warnings=_cut(found, asked.limit)
+    )
 
 
 def _level_used(level: Level) -> list[tuple[str, Quantity]]:

@@ -15,6 +15,7 @@ from service.question import Computed, Question
 from service.routes.shift import NO_STRENGTH
 from service.schemas import Labels, MaybeNumbers, Shape, Tabular, Texts
 
+NO_FACTOR = "a level with F = 0 has no g_F"
 NOT_STATED = "a constant that enters has no stated uncertainty"
 
 
@@ -90,6 +91,9 @@ def _pair(
         return {name: [None] * len(found) for name in names}
     if any(number is not None and number.uncertainty is None for number in numbers):
         missing[names[1]] = NOT_STATED
+    if None in numbers:
+        missing[names[0]] = NO_FACTOR
+        missing.setdefault(names[1], NO_FACTOR)
     return {
         names[0]: [None if number is None else number.value for number in numbers],
         names[1]: [None if number is None else number.uncertainty for number in numbers],

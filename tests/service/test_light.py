@@ -239,3 +239,25 @@ def test_every_level_answers_or_says_what_is_missing(species: str, client: TestC
             else:
                 assert answer["type"] == "/problems/not-published", (question, answer["detail"])
                 assert answer["parameter"]
+
+
+@pytest.mark.parametrize(("given", "echoed"), [("1064", 1064.0), ("1.064um", 1064.0), ("1064.1e0", 1064.1)])
+def test_wavelength_in_any_unit_echoes_as_nanometres(given: str, echoed: float, client: TestClient) -> None:
+    """A number keeps its digits, and one with a unit lands on the digits it has in nm."""
+    answer = client.get("/v1/atoms/87Rb/pairs", params={"level": "5s_2S1/2", "wavelength": given}).json()
+    assert answer["query"]["wavelength"] == echoed
+
+
+@pytest.mark.parametrize("given", ["1_064", "\u0661064", "1064 ducks"])
+def test_numbers_are_written_in_plain_digits(given: str, client: TestClient) -> None:
+    """Underscores, digits of other scripts and unknown units are refused."""
+    response = client.get("/v1/atoms/87Rb/pairs", params={"level": "5s_2S1/2", "wavelength": given})
+    assert (response.status_code, response.json()["parameter"]) == (422, "wavelength")
+
+
+def test_angles_beside_a_named_polarisation(client: TestClient) -> None:
+    """Angles that contradict a named polarisation are refused by name; spelt-out defaults are not."""
+    asked = {"level": "5s_2S1/2", "wavelength": "1064", "polarisation": "sigma+", "beam_angle": "90"}
+    assert client.get("/v1/atoms/87Rb/pairs", params=asked).status_code == 200
+    problem = client.get("/v1/atoms/87Rb/pairs", params={**asked, "ellipticity": "10"}).json()
+    assert problem["detail"] == "polarisation says it all: leave out ellipticity"

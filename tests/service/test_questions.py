@@ -101,6 +101,15 @@ def test_keys_are_identifiers_and_records_alike(client: TestClient, question: Qu
 
 
 @each_question
+def test_null_columns_have_a_reason(client: TestClient, question: Question) -> None:
+    """A column that holds null is listed under `missing`, and only such a column."""
+    answer = ask_example(client, question).json()
+    nulls = {name for name, column in answer.get("columns", {}).items() if None in column}
+    assert {item["column"] for item in answer.get("missing", [])} == nulls
+    assert all(item["reason"] for item in answer.get("missing", []))
+
+
+@each_question
 def test_question_is_documented(question: Question) -> None:
     """Every question has a summary, a description and a description for each of its members."""
     assert question.summary

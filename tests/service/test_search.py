@@ -96,6 +96,26 @@ def test_unknown_names_are_told_with_their_nearest(client: TestClient) -> None:
     assert (level["status"], level["parameter"]) == (404, "level")
 
 
+@pytest.mark.parametrize(
+    ("query", "parameter", "near"), [("level=5s.5p_3P9", "level", "5s.5p_3P0"), ("term=3Q", "term", "3P")]
+)
+def test_level_or_term_that_no_species_has(query: str, parameter: str, near: str, client: TestClient) -> None:
+    """A misspelt level or term among the filters is told with the nearest, not answered with nothing."""
+    response = client.get(f"/v1/levels?{query}")
+    problem = response.json()
+    assert (response.status_code, problem["parameter"]) == (404, parameter)
+    assert near in problem["nearest"]
+
+
+@pytest.mark.parametrize("path", ["/v1/lines?near=780&within=200", "/v1/levels?species=Rb,Sr,Dy", "/v1/book"])
+def test_catalogue_tables_say_why_a_column_has_gaps(path: str, client: TestClient) -> None:
+    """Every column with gaps gives its reason, where many rows of the book stand side by side."""
+    answer = client.get(path).json()
+    gaps = [name for name, column in answer["columns"].items() if None in column]
+    assert gaps
+    assert [item["column"] for item in answer["missing"]] == gaps
+
+
 def test_a_plus_that_lost_its_escape(client: TestClient) -> None:
     """`species=Ca+` reaches the server as `Ca ` and is read as the ion."""
     assert set(client.get("/v1/lines?species=Ca+").json()["columns"]["atom"]) == {"40Ca+"}
