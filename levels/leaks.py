@@ -126,6 +126,22 @@ def metastable_elsewhere(leaks: Leaks) -> list[Level]:
     ]
 
 
+def neglected(leaks: Leaks) -> list[str]:
+    """Say of each level on the way which dipole-allowed decays its one published share leaves no room for."""
+    graph = leaks.walk.graph
+    on_the_way = {laser.line.upper.name for laser in leaks.walk.lasers} | {
+        one.state.level.name for one in leaks.reached
+    }
+    notes = []
+    for name in graph.spans:
+        note = graph.branchings[name].note
+        if name in on_the_way and note.endswith("neglected"):
+            shares = [channel.line.branching for channel in graph.branchings[name].channels]
+            why = "; ".join(share.note for share in shares if share is not None and share.note)
+            notes.append(f"{name}: {note} ({why})" if why else f"{name}: {note}")
+    return notes
+
+
 def endless(photons: float) -> float | None:
     """Return the number, or None for a walk without end."""
     return None if photons > absorbing.ENDLESS else photons

@@ -7,6 +7,7 @@ from pydantic import Field
 from levels.decaygraph import Graph, graph_of
 from levels.errors import OutsideValidity
 from levels.lasers import Laser, make_laser, saturation_of_intensity
+from levels.leaks import neglected
 from levels.notation import parse_component
 from levels.quantity import Quantity, parse_quantity_input
 from levels.records import Line
@@ -88,7 +89,7 @@ def answer_repump(context: Context, path: Mapping[str, str], asked: RepumpAsked)
         records_table(repumpers),
         columnar=False,
         used=list(dict(_used(graph, found)).items()),
-        warnings=_warnings(graph, lasers, shown, asked),
+        warnings=[*_warnings(graph, lasers, shown, asked), *neglected(found.leaks)],
     )
 
 

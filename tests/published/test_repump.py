@@ -7,7 +7,7 @@ import pytest
 from levels.catalogue import Catalogue, load
 from levels.decaygraph import Graph, graph_of
 from levels.lasers import Laser, make_laser
-from levels.leaks import Leaks, leaks_of, metastable_elsewhere
+from levels.leaks import Leaks, leaks_of, metastable_elsewhere, neglected
 from levels.notation import format_half, parse_component
 from levels.repump import Scheme, Search, repump
 from levels.repumpfacts import Facts, facts_of
@@ -220,10 +220,13 @@ def test_repumps_of_chromium(book: Catalogue) -> None:
 
 
 def test_ytterbium_needs_no_repump(book: Catalogue) -> None:
-    """Yb traps at 399 nm without repumper; the leak is 1.2e-7 (Loftus et al., PRA 61, 051401) and not in the book."""
+    """Yb traps at 399 nm without repumper; its leak of 1.2e-7 (Loftus et al., PRA 61, 051401) is left out, and told."""
     found = leaks(book, "174Yb", "399")
     assert found.photons is None
     assert found.closure == "data"
+    (told,) = neglected(found)
+    assert "5d.6s_3D1, 5d.6s_3D2 neglected" in told
+    assert neglected(leaks(book, "87Rb", "780")) == []
 
 
 def test_ritz_sum_of_calcium_ion(book: Catalogue) -> None:
