@@ -14,9 +14,9 @@ CHROMIUM = next(filter(None, map(shutil.which, ("chromium", "chromium-browser", 
 QUIET = ["--no-sandbox", "--disable-gpu", "--disable-background-networking", "--no-first-run"]
 
 
-@pytest.fixture(scope="session")
+@pytest.fixture(scope="module")
 def browser() -> Iterator[Browser]:
-    """Chromium without a window; the tests of the page need one on the PATH."""
+    """Chromium without a window, one for each file: its event loop must not run beside other files' tests."""
     if CHROMIUM is None:
         pytest.fail("no chromium on the PATH: on Debian, install the package chromium")
     with sync_playwright() as playwright:
