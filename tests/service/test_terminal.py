@@ -1,6 +1,7 @@
 """The command line and the client ask the same questions and get the same answers."""
 
 import json
+from pathlib import Path
 from urllib.parse import parse_qsl, urlsplit
 
 import httpx2
@@ -8,6 +9,7 @@ import pytest
 from starlette.testclient import TestClient
 
 from service.client import Client, Refused
+from service.printing import table_lines
 from service.question import Question
 from service.routes import QUESTIONS
 from service.settings import Settings
@@ -55,6 +57,41 @@ def test_refusal_says_what_would_do(capsys: pytest.CaptureFixture[str]) -> None:
     assert "nearest: " in capsys.readouterr().err
 
 
+@pytest.mark.parametrize("question", [one for one in QUESTIONS if one.method == "POST"], ids=lambda one: one.name)
+def test_every_question_with_a_body_takes_a_file(
+    question: Question, capsys: pytest.CaptureFixture[str], tmp_path: Path
+) -> None:
+    """Each POST question is a command that takes its JSON from a file and prints small tables, no Python or JSON."""
+    body = tmp_path / "question.json"
+    body.write_text(json.dumps(dict(question.body_example or {})))
+    assert ask([question.name, str(body)]) == 0
+    text = capsys.readouterr().out
+    assert "release: " in text
+    assert "{'" not in text
+
+
+def test_missing_file_is_told(capsys: pytest.CaptureFixture[str], tmp_path: Path) -> None:
+    """A file that is not there ends with status 1 and its name."""
+    assert ask(["plan", str(tmp_path / "nowhere.json")]) == 1
+    assert "nowhere.json: No such file" in capsys.readouterr().err
+
+
+@pytest.mark.parametrize(
+    ("value", "uncertainty", "text"),
+    [
+        (384.228119682248, 8.1e-9, "384.2281196822 ± 8.1e-09 MHz"),
+        (15.54001, 0.017, "15.54 ± 0.017 MHz"),
+        (0.0, 1.0, "0 ± 1 MHz"),
+        (2.5, None, "2.5 MHz"),
+    ],
+)
+def test_numbers_stop_where_their_uncertainty_does(value: float, uncertainty: float | None, text: str) -> None:
+    """A number is printed to the second digit of its uncertainty."""
+    rest = {"warnings": [], "uncertainty_excludes": [], "sources": [], "release": "r"}
+    quantity = {"value": value, "uncertainty": uncertainty, "unit": "MHz", "reason": ""}
+    assert next(table_lines({"shift": quantity, **rest})) == f"shift  {text}"
+
+
 @pytest.mark.parametrize("question", [one for one in QUESTIONS if one.method == "GET"], ids=lambda one: one.name)
 def test_every_query_question_is_a_command(question: Question, capsys: pytest.CaptureFixture[str]) -> None:
     """Each GET question is a command; its example, given as options, prints what the server answers."""
@@ -62,7 +99,9 @@ def test_every_query_question_is_a_command(question: Question, capsys: pytest.Ca
     places = [part for part, name in zip(url.path.split("/"), question.path.split("/"), strict=True) if name[:1] == "{"]
     options = [word for name, value in parse_qsl(url.query) for word in (f"--{name}", value)]
     assert ask([question.name, *places, *options]) == 0
-    assert "release: " in capsys.readouterr().out
+    text = capsys.readouterr().out
+    assert "release: " in text
+    assert "{'" not in text
 
 
 def test_client_answers_typed_records(server: Server) -> None:
