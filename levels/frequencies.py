@@ -253,12 +253,15 @@ def _centroid(own: Mapping[Whose, Quantity], edges: list[Edge], line: LineTable,
 
 
 def _told(quantity: Quantity, isotope: int, source: Whose, has_shift: bool) -> Centroid:
+    """Say whose number it is; another isotope's keeps no uncertainty, since the shift from it is not known."""
     if source == isotope:
         return Centroid(quantity, str(isotope))
     if source == "any":
         return Centroid(quantity, "natural", "difference of energies that belong to different isotopes")
     owner = "the natural mixture" if source == "natural" else f"mass number {source}"
     why = TOO_LITTLE if has_shift and source == "natural" else ""
+    if source != "natural":
+        quantity = replace(quantity, uncertainty=None)
     return Centroid(quantity, str(source), f"frequency of {owner}: this isotope's own is not published{why}")
 
 

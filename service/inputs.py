@@ -3,6 +3,7 @@
 from collections.abc import Mapping
 from dataclasses import dataclass
 
+from levels.features import has_own_centroid
 from levels.multiplet import caution, quiet_field_gauss
 from levels.quantity import Quantity
 from levels.records import Level, Line
@@ -33,9 +34,15 @@ def line_inputs(line: Line) -> Used:
 
 def line_cautions(line: Line) -> tuple[str, ...]:
     """What a line leaves out at any field."""
-    natural = line.centroid is not None and line.centroid_isotope == "natural"
-    mixture = (f"the frequency of {line.name} is that of the natural mixture of isotopes",) if natural else ()
-    return (*cautions(line.lower), *cautions(line.upper), *mixture)
+    borrowed: tuple[str, ...] = ()
+    if line.centroid is not None and line.centroid_isotope == "natural":
+        borrowed = (f"the frequency of {line.name} is that of the natural mixture of isotopes",)
+    elif line.centroid is not None and not has_own_centroid(line):
+        whose = f"mass number {line.centroid_isotope}"
+        borrowed = (
+            f"the frequency of {line.name} is that of {whose}: the shift of {line.atom} is not in the catalogue",
+        )
+    return (*cautions(line.lower), *cautions(line.upper), *borrowed)
 
 
 def line_warnings(line: Line, largest_field_gauss: float) -> list[str]:

@@ -71,3 +71,25 @@ def test_every_line_answers(species: str, client: TestClient, book: Catalogue) -
             assert finite(one)
             missing = (table.get("type", ""), one.get("type", ""))
             assert len(set(missing)) == 1, (atom.isotope.name, line.name, missing)
+
+
+def test_a_borrowed_frequency_is_told_and_has_no_uncertainty(client: TestClient) -> None:
+    """43Ca+ at 397 nm has only 40Ca+'s frequency, some 0.7 GHz away: no answer may pass it off as good to 0.2 MHz."""
+    found = client.get("/v1/atoms/43Ca%2B/shift?line=397&lower=4,0&upper=4,1&field=1").json()
+    assert any("mass number 40" in text for text in found["warnings"])
+    assert found["frequency"]["uncertainty"] is None
+    assert found["offset"]["uncertainty"] is not None
+    table = client.get("/v1/atoms/43Ca%2B/components?line=397&field=1").json()
+    assert any("mass number 40" in text for text in table["warnings"])
+    assert set(table["columns"]["frequency_uncertainty_THz"]) == {None}
+    own = client.get("/v1/atoms/40Ca%2B/shift?line=397&lower=1/2,1/2&upper=1/2,-1/2&field=0").json()
+    assert own["warnings"] == []
+    assert own["frequency"]["uncertainty"] is not None
+
+
+@pytest.mark.parametrize("atom", [atom for atom in CATALOGUE.species("Ca").values() if atom.isotope.mass_number != 40])
+def test_no_borrowed_centroid_keeps_an_uncertainty(atom: Atom) -> None:
+    """The frequency of another isotope says nothing certain of this one, in any line of calcium."""
+    for line in atom.lines:
+        if line.centroid is not None and line.centroid_isotope == "40":
+            assert line.centroid.uncertainty is None
