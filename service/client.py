@@ -4,6 +4,8 @@ Every question is a method of its own and answers with the record that the serve
 `Refused` with the problem's members.
 """
 
+import json
+from collections.abc import Iterator
 from types import TracebackType
 from typing import Any, Self, TypeVar
 from urllib.parse import quote
@@ -12,20 +14,30 @@ import httpx2
 from pydantic import BaseModel
 
 from service.lightshift_shapes import LightshiftAnswered, PolarisabilityAnswered
+from service.plan_shapes import PlanAnswered
 from service.problems import ProblemBody
+from service.repump_shapes import RepumpAnswered
 from service.routes import (
     angular,
     book,
     catalogue,
     components,
     cooling,
+    evolution,
+    features,
     field,
+    findings,
     force,
     formula,
+    geometry,
+    gradients,
     insensitive,
     magic,
     multiplet,
     pairs,
+    profile,
+    remedies,
+    scan,
     search,
     shift,
     slower,
@@ -33,7 +45,10 @@ from service.routes import (
     sublevels,
     sweep,
     trap,
+    trapcheck,
 )
+from service.schemas import Answered
+from service.scheme_shapes import SchemeAnswered
 
 Answer = TypeVar("Answer", bound=BaseModel)
 
@@ -77,6 +92,14 @@ class Client:
     def lines(self, atom: str) -> catalogue.LinesAnswered:
         """Every line of an isotope."""
         return self._get(f"{_atom(atom)}/lines", {}, catalogue.LinesAnswered)
+
+    def sources(self) -> Answered:
+        """Every publication, with the values that rest on it."""
+        return self._get("/v1/sources", {}, Answered)
+
+    def source(self, id: str) -> catalogue.SourceAnswered:
+        """One publication, by its key in any answer's `sources`."""
+        return self._get(f"/v1/sources/{quote(id, safe='')}", {}, catalogue.SourceAnswered)
 
     def release(self) -> catalogue.ReleaseAnswered:
         """The data release."""
@@ -134,6 +157,10 @@ class Client:
         """A slower's field: `line`, `initial_speed`, `final_speed`, `detuning`."""
         return self._get(f"{_atom(atom)}/slower", asked, slower.SlowerAnswered)
 
+    def gradients(self, atom: str, **asked: Any) -> gradients.GradientsAnswered:
+        """Polarisation-gradient cooling: `line`, `component`, `detuning`, `saturation`."""
+        return self._get(f"{_atom(atom)}/gradients", asked, gradients.GradientsAnswered)
+
     def cooling(self, atom: str, **asked: Any) -> cooling.CoolingAnswered:
         """Cooling figures of a line: `line`, `detuning`, `intensity`, `gradient` and more."""
         return self._get(f"{_atom(atom)}/cooling", asked, cooling.CoolingAnswered)
@@ -145,6 +172,18 @@ class Client:
     def formula(self, atom: str, **asked: Any) -> formula.FormulaAnswered:
         """A formula of the field: `level` and `sublevel`, or `line`, `lower` and `upper`; `**{"as": "c"}`."""
         return self._get(f"{_atom(atom)}/formula", asked, formula.FormulaAnswered)
+
+    def repump(self, atom: str, **asked: Any) -> RepumpAnswered:
+        """Leaks, repumpers and photons before loss: `drive`, `detuning`, `saturation`, `field`."""
+        return self._get(f"{_atom(atom)}/repump", asked, RepumpAnswered)
+
+    def features(self, element: str, **asked: Any) -> features.FeaturesAnswered:
+        """What a vapour cell shows of a line: `line`, `temperature`, `isotopes`, `crossovers`."""
+        return self._get(f"{_element(element)}/features", asked, features.FeaturesAnswered)
+
+    def profile(self, element: str, **asked: Any) -> profile.ProfileAnswered:
+        """The shape of a line in a vapour: `line`, `temperature`, `start`, `stop`, `points`."""
+        return self._get(f"{_element(element)}/profile", asked, profile.ProfileAnswered)
 
     def lightshift(self, atom: str, **asked: Any) -> LightshiftAnswered:
         """What a light does to every sublevel: `level`, `wavelength`, `polarisation`, `field`, `power`, `waist`."""
@@ -180,10 +219,65 @@ class Client:
 
     def sweep(self, **asked: Any) -> sweep.SweepAnswered:
         """Sublevels or components over a grid: `atom`, `level` or `line`, `fields`, `columns`."""
-        return _read(self._http.post("/v1/sweep", json=asked), sweep.SweepAnswered)
+        return self._post("sweep", asked, sweep.SweepAnswered)
+
+    def plan(self, **asked: Any) -> PlanAnswered:
+        """A frequency plan: `wanted`, `locks`, `modulators`, `max_chain`."""
+        return self._post("plan", asked, PlanAnswered)
+
+    def scheme(self, **asked: Any) -> SchemeAnswered:
+        """A scheme checked: `atom`, `field`, `beams`, `target`."""
+        return self._post("scheme", asked, SchemeAnswered)
+
+    def scan(self, **asked: Any) -> scan.ScanAnswered:
+        """A scheme over a grid: `atom`, `field`, `beams`, `axes`, `columns`."""
+        return self._post("scan", asked, scan.ScanAnswered)
+
+    def evolution(self, **asked: Any) -> evolution.EvolutionAnswered:
+        """Populations of a scheme against time: `atom`, `field`, `beams`, `initial`, `times`."""
+        return self._post("evolution", asked, evolution.EvolutionAnswered)
+
+    def remedies(self, **asked: Any) -> remedies.RemediesAnswered:
+        """What ends a dark state: `atom`, `field`, `beams`, `magnitudes`, `angles`."""
+        return self._post("remedies", asked, remedies.RemediesAnswered)
+
+    def trapcheck(self, **asked: Any) -> trapcheck.TrapcheckAnswered:
+        """Whether beams trap and cool in a field gradient: `atom`, `gradient`, `beams`."""
+        return self._post("trapcheck", asked, trapcheck.TrapcheckAnswered)
+
+    def geometry(self, **asked: Any) -> geometry.GeometryAnswered:
+        """Polarisations of beams along the field, and wave plates: `field`, `beams`."""
+        return self._post("geometry", asked, geometry.GeometryAnswered)
+
+    def findings(self) -> findings.FindingsAnswered:
+        """Every kind of finding that a scheme may have."""
+        return self._get("/v1/findings", {}, findings.FindingsAnswered)
+
+    def scan_lines(self, **asked: Any) -> Iterator[dict[str, Any]]:
+        """The lines of a scan as they come, each with its `type`: meta, row, progress, end. Leaving ends the scan."""
+        with self._http.stream("POST", "/v1/scan", json={**asked, "format": "ndjson"}) as answer:
+            if answer.status_code != 200:
+                raise Refused(ProblemBody.model_validate_json(answer.read()))
+            kind = ""
+            for text in answer.iter_lines():
+                line = json.loads(text)
+                kind = line["type"]
+                if kind == "error":
+                    raise Refused(ProblemBody.model_validate({**line, "type": line["problem"]}))
+                yield line
+            if kind != "end":
+                raise ConnectionError("the scan was cut off")
 
     def _get(self, path: str, asked: dict[str, Any], model: type[Answer]) -> Answer:
-        return _read(self._http.get(path, params={key: str(value) for key, value in asked.items()}), model)
+        params = {key: str(value) for key, value in asked.items() if value is not None}
+        return _read(self._http.get(path, params=params), model)
+
+    def _post(self, name: str, asked: dict[str, Any], model: type[Answer]) -> Answer:
+        return _read(self._http.post(f"/v1/{name}", json=asked), model)
+
+
+def _element(name: str) -> str:
+    return f"/v1/elements/{quote(name, safe='')}"
 
 
 def _atom(name: str) -> str:

@@ -2,7 +2,7 @@
 
 import json
 from pathlib import Path
-from urllib.parse import parse_qsl, urlsplit
+from urllib.parse import parse_qsl, unquote, urlsplit
 
 import httpx2
 import pytest
@@ -115,6 +115,21 @@ def test_client_answers_typed_records(server: Server) -> None:
         assert client.three_j(j1=1, j2=1, j3=0, m1=1, m2=-1, m3=0).exact == "sqrt(3)/3"
         swept = client.sweep(atom="87Rb", level="5s_2S1/2", fields={"values": [1.0]}, sublevels=["2,2"])
         assert swept.columns["F"] == [2.0]
+
+
+@pytest.mark.parametrize("question", QUESTIONS, ids=lambda one: one.name)
+def test_client_asks_every_question(question: Question, server: Server) -> None:
+    """Each question is a method of the client that answers with the question's record."""
+    url = urlsplit(question.example)
+    places = [
+        unquote(part)
+        for part, name in zip(url.path.split("/"), question.path.split("/"), strict=True)
+        if name[:1] == "{"
+    ]
+    method = {"3j": "three_j", "6j": "six_j"}.get(question.name, question.name.replace("-", "_"))
+    asked = dict(parse_qsl(url.query)) if question.body_example is None else dict(question.body_example)
+    with Client(server.url) as client:
+        assert type(getattr(client, method)(*places, **asked)) is question.answered
 
 
 def test_client_raises_the_problem(server: Server) -> None:
