@@ -19,7 +19,7 @@ from levels.beams import (
     offset_of_component,
     offset_of_hyperfine,
 )
-from levels.errors import NotPublished, OutsideValidity
+from levels.errors import NotPublished, OutsideValidity, UnknownName
 from levels.geometry import (
     Axes,
     Complex,
@@ -33,6 +33,7 @@ from levels.geometry import (
     transverse_basis,
 )
 from levels.jones import Plate, circular, elliptical, linear, through_plates, with_impurity
+from levels.notation import format_half
 from levels.pumping import populations_in
 from levels.records import Atom, Level, Line
 from levels.structure import Label, Structure
@@ -126,6 +127,8 @@ def build_at(setup: Setup, place: int, axes: Axes) -> Beam:
         return build_beam(setup.atom, setup.beams[place], axes)
     except OutsideValidity as error:
         raise OutsideValidity(f"beams.{place}.{error.parameter}", error.given, error.allowed) from error
+    except UnknownName as error:
+        raise UnknownName(f"beams.{place}.{error.kind}", error.given, error.nearest, error.hint) from error
 
 
 def build_beam(atom: Atom, beam: BeamSetup, axes: Axes) -> Beam:
@@ -199,7 +202,11 @@ def _offset(line: Line, tuning: Tuning, magnitude_gauss: float) -> float:
     if (tuning.component is not None) + zeeman + (tuning.frequency_mhz is not None) > 1:
         raise OutsideValidity("detuning", "several references", "from a component, lower and upper, or a frequency")
     if tuning.component is not None:
-        return offset_of_hyperfine(line, *tuning.component, tuning.detuning_mhz)
+        try:
+            return offset_of_hyperfine(line, *tuning.component, tuning.detuning_mhz)
+        except UnknownName as error:
+            given = "-".join(format_half(twice) for twice in tuning.component)
+            raise UnknownName("component", given, (), error.hint) from error
     if zeeman:
         if tuning.lower is None or tuning.upper is None:
             raise OutsideValidity("detuning", "one sublevel", "lower and upper sublevel together")

@@ -103,11 +103,15 @@ def _beam(context: Context, atom: str, asked: asked_for.BeamAsked, place: int) -
         line = context.line(atom, asked.line)
     except UnknownName as error:
         raise UnknownName(f"beams.{place}.line", error.given, error.nearest, error.hint) from None
+    try:
+        optics = optics_of(asked.polarisation)
+    except OutsideValidity as error:
+        raise OutsideValidity(f"beams.{place}.polarisation.{error.parameter}", error.given, error.allowed) from None
     frequency = None if asked.frequency is None else asked.frequency * THZ
     return BeamSetup(
         asked.name,
         line,
-        optics_of(asked.polarisation),
+        optics,
         Tuning(asked.detuning, asked.component, asked.lower, asked.upper, frequency),
         triple(asked.direction),
         asked.angle_to_field,

@@ -7,7 +7,7 @@ import numpy as np
 import pytest
 
 from levels.beams import intensity_of_saturation, offset_of_component, offset_of_hyperfine
-from levels.errors import NotPublished, OutsideValidity
+from levels.errors import NotPublished, OutsideValidity, UnknownName
 from levels.geometry import axes_of, resolve
 from levels.jones import plate
 from levels.setup import BeamSetup, Optics, Setup, Share, Tuning, build, populations_of
@@ -122,6 +122,14 @@ def test_what_cannot_be_is_told_with_the_beams_place(given: dict[str, Any], para
     with pytest.raises(OutsideValidity) as caught:
         one(**given)
     assert caught.value.parameter == parameter
+
+
+def test_component_that_the_line_lacks_is_told_as_it_was_given() -> None:
+    """F = 1 - 7 does not exist on D2: the component and the beam's place are named, and what F there are."""
+    with pytest.raises(UnknownName) as caught:
+        one(tuning=Tuning(component=(2, 14)))
+    assert (caught.value.kind, caught.value.given) == ("beams.0.component", "1-7")
+    assert "0, 1, 2, 3" in caught.value.hint
 
 
 def test_absolute_frequency_needs_a_published_one() -> None:
