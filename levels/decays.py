@@ -14,6 +14,7 @@ from levels.errors import NotPublished
 from levels.quantity import Quantity, in_unit
 from levels.records import Atom, Level, Line
 
+STAND_IN_PER_S = 1e7  # the rate of a level whose branching is published and whose lifetime is not
 CLOSURE_TOLERANCE = 1e-3  # shares that miss 1 by no more are taken as complete, whatever their stated uncertainty
 
 
@@ -27,13 +28,17 @@ class Channel:
 
 @dataclass(frozen=True, slots=True)
 class Decay:
-    """Every way out of one level: total rate, lines, and the rate into levels that are not in the catalogue."""
+    """Every way out of one level: total rate, lines, and the rate into levels that are not in the catalogue.
+
+    Where no rate is published but shares are, `is_timed` is False: the rates say where decays go, not how fast.
+    """
 
     level: Level
     total_per_s: float
     channels: tuple[Channel, ...]
     leak_per_s: float
     notes: tuple[str, ...] = ()
+    is_timed: bool = True
 
     @property
     def width_mhz(self) -> float:
@@ -137,10 +142,12 @@ def _complete(
 
 
 def _from_lines(level: Level, lines: list[Line]) -> Decay:
-    """Add up the lines of a level without a lifetime; one without any rate is taken as stable."""
+    """Add up the lines of a level without a lifetime; one with dipole shares only decays by those, else is stable."""
     rates = {line.name: own_rate(line) for line in lines}
     channels = tuple(Channel(line, own[0]) for line in lines if (own := rates[line.name]) is not None)
     missing = [line.name for line in lines if rates[line.name] is None]
+    if not channels and any(line.branching and line.multipole == "E1" and not line.induced for line in lines):
+        return _untimed(level, lines)
     owner = f"{level.atom} {level.name}"
     notes: tuple[str, ...] = ()
     if missing and channels:
@@ -150,10 +157,21 @@ def _from_lines(level: Level, lines: list[Line]) -> Decay:
     return Decay(level, sum(channel.rate_per_s for channel in channels), channels, 0.0, notes)
 
 
+def _untimed(level: Level, lines: list[Line]) -> Decay:
+    """Share out the decays of a level without a lifetime, at a rate that stands in for its own."""
+    known = {line.name: in_unit(line.branching, "1").value for line in lines if line.branching is not None}
+    missing = [line.name for line in lines if line.name not in known]
+    fractions, leak, notes = _complete(level, known, missing, 1.0 - sum(known.values()), CLOSURE_TOLERANCE)
+    channels = tuple(Channel(line, fractions[line.name] * STAND_IN_PER_S) for line in lines if fractions.get(line.name))
+    owner = f"{level.atom} {level.name}"
+    told = f"the lifetime of {owner} is not published: {1e6 / STAND_IN_PER_S:g} us stands in, its branching is known"
+    return Decay(level, STAND_IN_PER_S, channels, leak * STAND_IN_PER_S, (told, *notes), is_timed=False)
+
+
 def driven_decay(atom: Atom, line: Line) -> Decay:
     """Return the decay of a line's upper level, which must give this line a rate: no rate, no Rabi frequency."""
     decay = decay_of(atom, line.upper)
-    if decay.rate_of(line) <= 0.0:
+    if decay.rate_of(line) <= 0.0 or not decay.is_timed:
         hint = "without it the light's Rabi frequency is unknown; a lab overlay can supply it"
         raise NotPublished("Einstein A (or lifetime and branching)", f"{line.atom} {line.name}", hint)
     return decay

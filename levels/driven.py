@@ -174,7 +174,7 @@ def other_lines(atom: Atom, beam: Beam, lower_levels: Iterable[str] | None = Non
         if line.name == beam.line.name or line.photons != 1 or line.multipole != "E1":
             continue
         decay = decay_of(atom, line.upper)
-        if (allowed is not None and line.lower.name not in allowed) or decay.rate_of(line) <= 0.0:
+        if (allowed is not None and line.lower.name not in allowed) or not decay.is_timed or decay.rate_of(line) <= 0.0:
             continue
         detuning = laser - frequency_mhz_of(line)
         if abs(detuning) > FARTHEST_SHARE * laser:

@@ -94,3 +94,19 @@ def test_saturation_intensity_of_rubidium():
     assert decay.width_mhz == pytest.approx(6.0666, abs=2e-4)
     assert saturation_intensity(RB87_D2.lines[0], decay) == pytest.approx(1.66933, abs=35e-5)
     assert np.isfinite(decay.total_per_s)
+
+
+def test_shares_without_a_lifetime_say_where_not_how_fast():
+    """Dipole shares alone are followed at a rate that stands in, which no laser may count on; E2 alone is stable."""
+    levels = tuple(replace(level, lifetime=None, width=None) for level in CA40.levels)
+    ends = {level.name: level for level in levels}
+    lines = tuple(replace(line, lower=ends[line.lower.name], upper=ends[line.upper.name]) for line in CA40.lines)
+    atom = replace(CA40, levels=levels, lines=tuple(replace(line, einstein_A=None) for line in lines))
+    decay = decay_of(atom, level_named(atom, "P1/2"))
+    assert not decay.is_timed
+    assert [channel.rate_per_s / decay.total_per_s for channel in decay.channels] == pytest.approx([0.93565, 0.06435])
+    assert "the lifetime of 40Ca+ P1/2 is not published" in decay.notes[0]
+    with pytest.raises(NotPublished):
+        driven_decay(atom, atom.lines[0])
+    slow = replace(atom, lines=tuple(replace(line, multipole="E2") for line in atom.lines))
+    assert decay_of(slow, level_named(slow, "P1/2")).total_per_s == 0.0
