@@ -4,6 +4,7 @@ Written from the OpenAPI document and the table of problems when first asked for
 works offline, and there is no inline script or style.
 """
 
+import re
 from collections.abc import Awaitable, Callable, Iterable, Mapping
 from functools import cache, partial
 from html import escape
@@ -15,6 +16,7 @@ from starlette.requests import Request
 from starlette.responses import Response
 from starlette.routing import Route
 
+from levels.findings import KINDS
 from service.formats import etag, etag_matches
 from service.middleware import PAGE_POLICY
 from service.problems import TYPES, Problem, ProblemType, nearest_names
@@ -22,6 +24,10 @@ from service.question import Question
 
 FILES = Path(__file__).parent / "page" / "docs"
 HTML = "text/html; charset=utf-8"
+CAUTION = (
+    "Laser beams can blind: before you change a power or the path of a beam, follow your local rules and your laser"
+    " safety officer."
+)
 PAGE_HEADERS = {"Content-Security-Policy": PAGE_POLICY.decode(), "Cache-Control": "public, max-age=300"}
 
 
@@ -83,14 +89,32 @@ def docs_page(document: Mapping[str, Any], questions: list[Question]) -> str:
     parts = [
         f"<h1>{escape(info['title'])} {escape(info['version'])}</h1>",
         f"<p>{escape(info['description'])}</p>",
-        '<p><a href="/openapi.json">OpenAPI document</a> · <a href="/problems">problem types</a></p>',
+        '<p><a href="/openapi.json">OpenAPI document</a> · <a href="/problems">problem types</a>'
+        ' · <a href="/findings">findings of a scheme</a></p>',
     ]
-    for tag in document["tags"]:
-        mine = [question for question in questions if question.tag == tag["name"]]
+    tags = [(tag, [one for one in questions if one.tag == tag["name"]]) for tag in document["tags"]]
+    parts += [_index(tag["name"], mine) for tag, mine in tags if mine]
+    for tag, mine in tags:
         if mine:
             parts.append(f"<h2>{escape(tag['name'])}</h2>\n<p>{escape(tag['description'])}</p>")
             parts += [_section(question, document) for question in mine]
     return _page(f"{info['title']}: documentation", "\n".join(parts))
+
+
+def _index(tag: str, questions: Iterable[Question]) -> str:
+    links = (
+        f'<a href="/docs#{_anchor(one)}" title="{escape(one.summary)}">{escape(one.name)}</a>' for one in questions
+    )
+    return f"<p>{escape(tag)}: {' · '.join(links)}</p>"
+
+
+def _anchor(question: Question) -> str:
+    return escape(question.name.replace(" ", "-"))
+
+
+def _prose(text: str) -> str:
+    """Text as HTML, what stands between backticks as code."""
+    return re.sub("`([^`]+)`", r"<code>\1</code>", escape(text))
 
 
 def _section(question: Question, document: Mapping[str, Any]) -> str:
@@ -98,10 +122,10 @@ def _section(question: Question, document: Mapping[str, Any]) -> str:
     answer = operation["responses"]["200"]["content"]["application/json"]["schema"]
     return "\n".join(
         (
-            f'<section id="{escape(question.name.replace(" ", "-"))}">',
+            f'<section id="{_anchor(question)}">',
             f"<h3>{escape(question.summary)}</h3>",
             f"<p><code>{question.method} {escape(question.path)}</code></p>",
-            *(f"<p>{escape(text)}</p>" for text in question.description.split("\n\n")),
+            *(f"<p>{_prose(text)}</p>" for text in question.description.split("\n\n")),
             _parameters(operation, document),
             _form(question, operation),
             '<pre class="answer" aria-live="polite"></pre>',
@@ -114,13 +138,36 @@ def _section(question: Question, document: Mapping[str, Any]) -> str:
 def _parameters(operation: Mapping[str, Any], document: Mapping[str, Any]) -> str:
     if "requestBody" in operation:
         schema = operation["requestBody"]["content"]["application/json"]["schema"]
-        return _members(schema, document, "Members of the body")
+        parts = [(name, part) for name, part in _parts(schema, document).items() if name != _name(schema)]
+        inner = [_members(part, document, f"Members of {name}") for name, part in parts]
+        return "\n".join((_members(schema, document, "Members of the body"), *inner))
     rows = [
         (row["name"], _kind(row["schema"], document), row["schema"].get("default"), row.get("description", ""))
         for row in operation.get("parameters", ())
     ]
     needed = {row["name"] for row in operation.get("parameters", ()) if row.get("required")}
     return _table("Parameters", rows, needed)
+
+
+def _parts(schema: Mapping[str, Any], document: Mapping[str, Any]) -> dict[str, Mapping[str, Any]]:
+    """The objects that a schema is made of, by name, each once, outer ones first."""
+    found: dict[str, Mapping[str, Any]] = {}
+    waiting: list[Any] = [schema]
+    while waiting:
+        part = waiting.pop(0)
+        if isinstance(part, list):
+            waiting += part
+        elif isinstance(part, Mapping) and "$ref" in part:
+            if _name(part) not in found:
+                found[_name(part)] = part
+                waiting.append(dict(_solved(part, document)))
+        elif isinstance(part, Mapping):
+            waiting += [value for key, value in part.items() if key not in ("default", "example", "examples")]
+    return {name: part for name, part in found.items() if "properties" in _solved(part, document)}
+
+
+def _name(schema: Mapping[str, Any]) -> str:
+    return str(schema.get("$ref", "")).rpartition("/")[2]
 
 
 def _members(schema: Mapping[str, Any], document: Mapping[str, Any], caption: str) -> str:
@@ -140,7 +187,7 @@ def _table(caption: str, rows: list[tuple[str, str, Any, str]], needed: set[str]
     if not rows:
         return ""
     cells = (
-        (f"<code>{escape(name)}</code>", escape(kind), _default(name, default, needed), escape(text))
+        (f"<code>{escape(name)}</code>", escape(kind), _default(name, default, needed), _prose(text))
         for name, kind, default, text in rows
     )
     body = "\n".join("<tr>" + "".join(f"<td>{cell}</td>" for cell in row) + "</tr>" for row in cells)
@@ -194,6 +241,24 @@ def problem_page(row: ProblemType) -> str:
 def problems_page() -> str:
     """The page of all problem types."""
     return _page("Problem types", "<h1>Problem types</h1>\n" + "\n".join(_problem(row, "h2") for row in TYPES.values()))
+
+
+def findings_page() -> str:
+    """The page of all findings that a scheme may have."""
+    rows = "\n".join(
+        f'<tr id="{kind.code}"><td><code>{kind.code}</code></td><td>{kind.severity}</td><td>{escape(kind.unit)}</td>'
+        f"<td>{escape(kind.meaning)}</td></tr>"
+        for kind in KINDS
+    )
+    heads = "".join(
+        f'<th scope="col">{head}</th>' for head in ("code", "usual severity", "unit", "the number behind it")
+    )
+    return _page(
+        "Findings of a scheme",
+        "<h1>Findings of a scheme</h1>\n<p>What <code>/v1/scheme</code> may say about beams in a field. Codes never"
+        " change; the number behind a finding may make it more or less severe.</p>\n"
+        f"<table><caption>Findings</caption>\n<tr>{heads}</tr>\n{rows}\n</table>\n<p>{escape(CAUTION)}</p>",
+    )
 
 
 def _problem(row: ProblemType, head: str) -> str:

@@ -61,6 +61,8 @@ ColumnName = Literal[
 ]
 MISSING = "does not exist at this point: nothing changes, or nothing leaves"
 LISTED = 100_000
+CHANGES = "; ".join(f"{row.name} ({row.unit}): {row.meaning}" for row in PARAMETERS.values())
+COMPUTES = "; ".join(f"{row.name}: {row.meaning}" for row in COLUMNS.values())
 
 
 def _value(given: Any) -> float | str:
@@ -75,7 +77,7 @@ Value = Annotated[Any, BeforeValidator(_value), NUMBER_OR_TEXT]  # which unit it
 class GridAxis(Strict):
     """One axis: a parameter and its values, in its own unit or as text with a unit."""
 
-    parameter: ParameterName = Field(description="what changes; the last axis runs fastest")
+    parameter: ParameterName = Field(description=f"what changes: {CHANGES}")
     beam: Name | None = Field(None, description="whose it is, where it is a beam's")
     plate: int = Field(1, ge=1, le=10, strict=True, description="of `plate`: which of the beam's wave plates, from 1")
     start: Value | None = Field(None, description="first value")
@@ -117,9 +119,14 @@ def in_unit(given: float | str, unit: str, where: str) -> float:
 class ScanAsked(SchemeAsked):
     """A scheme and the grid to solve it on."""
 
-    axes: list[GridAxis] = Field(min_length=1, max_length=MOST_AXES, description="up to three axes")
+    axes: list[GridAxis] = Field(
+        min_length=1, max_length=MOST_AXES, description="up to three axes; the last one runs fastest"
+    )
     columns: list[ColumnName] = Field(
-        ["scattering_per_s"], min_length=1, max_length=len(COLUMNS), description="what to compute at each point"
+        ["scattering_per_s"],
+        min_length=1,
+        max_length=len(COLUMNS),
+        description=f"what to compute at each point: {COMPUTES}",
     )
 
 

@@ -7,10 +7,11 @@ from html.parser import HTMLParser
 import pytest
 from starlette.testclient import TestClient
 
+from levels.findings import KINDS
 from service.problems import TYPES
 from service.routes import QUESTIONS
 
-PAGES = ("/docs", "/problems", *(row.uri for row in TYPES.values()))
+PAGES = ("/docs", "/problems", "/findings", *(row.uri for row in TYPES.values()))
 
 
 class Page(HTMLParser):
@@ -65,6 +66,24 @@ def test_every_question_is_on_the_page(client: TestClient) -> None:
         assert f"{question.method} {question.path}" in text
         assert f'data-path="{question.path}"' in text
         assert escape(question.summary) in text
+
+
+def test_every_finding_is_on_its_page(client: TestClient) -> None:
+    """The page of findings has each code with its severity and meaning, from the library's table, and the caution."""
+    text = client.get("/findings").text
+    for kind in KINDS:
+        assert f'<tr id="{kind.code}"><td><code>{kind.code}</code></td><td>{kind.severity}</td>' in text
+        assert escape(kind.meaning) in text
+    assert "laser safety officer" in text
+
+
+def test_members_of_nested_bodies_are_on_the_page(client: TestClient) -> None:
+    """What a beam and an axis of a scan may hold stands beside the body that holds them."""
+    text = client.get("/docs").text
+    section = text[text.index('<section id="scan">') :]
+    section = section[: section.index("</section>")]
+    for name in ("polariser", "waist", "misalignment (deg)", "photons_before_loss: "):
+        assert name in section
 
 
 def test_pages_have_etags(client: TestClient) -> None:
