@@ -46,9 +46,12 @@ function chooseEnds(columns) {
 }
 
 function number(name, scalar, first = false) {
-  const unit = scalar.unit === "1" ? "" : ` ${scalar.unit}`;
+  const unit = scalar.unit === "1" ? "" : ` ${scalar.unit.replace(/2$/, "\u00b2")}`;
   const text = [measured(scalar.value, scalar.uncertainty), element("span", unit, { class: "unit" })];
-  if (scalar.reason) text.push(element("span", ` (${scalar.reason})`, { class: "unit" }));
+  if (scalar.reason) {
+    const said = scalar.value === null || scalar.reason.length < 40 ? ` (${scalar.reason})` : " (uncertainty unknown)";
+    text.push(element("span", said, { class: "unit", title: scalar.reason }));
+  }
   return [element("dt", name), element("dd", text, { class: first ? "first" : "" })];
 }
 
@@ -64,7 +67,8 @@ async function one(signal) {
     number("shift from zero field", answer.shift), number("slope", answer.slope), number("quadratic coefficient", answer.quadratic),
     number("strength", answer.strength), [element("dt", "polarisation"), element("dd", answer.polarisation)],
   ].flat());
-  const without = answer.uncertainty_excludes.length ? `Uncertainties leave out ${answer.uncertainty_excludes.join(", ")}, for which none is stated.` : "";
+  const excluded = answer.uncertainty_excludes.join(", ");
+  const without = excluded ? `No uncertainty is stated for ${excluded}: it is left out, and where it could outweigh the rest the uncertainty is unknown.` : "";
   at("one").replaceChildren(list, element("p", without, { class: "help" }), ...notes(answer));
   return answer.sources;
 }

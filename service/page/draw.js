@@ -84,7 +84,7 @@ export function curves(target, columns, atom, level) {
   target.replaceChildren();
   const width = Math.max(280, target.clientWidth || 860);
   const plot = new uPlot({
-    width, height: 340, legend: { show: states <= 16 }, scales: { x: { time: false } },
+    width, height: 340, pxAlign: 0, legend: { show: states <= 16 }, scales: { x: { time: false } },
     axes: [{ label: "field (G)" }, { label: "energy (MHz)", size: 70 }],
     series: [{ label: "field (G)" }, ...series],
   }, [fields, ...lines], target);

@@ -22,6 +22,14 @@ def test_first_sight_answers_a_question(page: Page) -> None:
     assert shown(page, "#release").startswith("data 20")
 
 
+def test_unknown_uncertainties_are_short_here_and_explained_once(page: Page) -> None:
+    """A number without uncertainty says so in two words, with the reason on pointing at it and one line below."""
+    assert "4.47877189 MHz (uncertainty unknown)" in shown(page, "#one")
+    assert "could outweigh" in (page.get_attribute("#one dd span[title*=outweigh]", "title") or "")
+    assert "No uncertainty is stated for g_J(5p_2P3/2)" in shown(page, "#one .help")
+    assert "Hz/G\u00b2" in shown(page, "#one")
+
+
 def test_numbers_are_those_of_the_service(page: Page, server: Server) -> None:
     """The slope on the page has the digits that the request has."""
     query = {"line": "780", "lower": "2,2", "upper": "3,3", "field": "3.2 G"}
