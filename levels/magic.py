@@ -50,7 +50,7 @@ class Solution:
     of the value solved for, in its own unit, NaN where not known; `stated` the part that stated inputs make. `slopes`
     are d(difference) per nm, degree or gauss. `vector_a03` is half of what the difference changes by from sigma- to
     sigma+, `tensor_a03` what it changes by from there to pi; where both are below a thousandth of the polarisability
-    no change of polarisation matters (`insensitive`).
+    (within one level: of the lines' parts of the difference) no change of polarisation matters (`insensitive`).
     """
 
     unknown: str
@@ -168,7 +168,7 @@ def solution(lower: Side | None, upper: Side, setting: Setting, unknown: str) ->
     doubt = _doubt(one, two, nu, fractions)
     common = float(fractions @ (two if one is None else one).by_drive(nu)[:, 0])
     vector, tensor = float(plus - minus_) / 2, float(none - (plus + minus_) / 2)
-    scale = INSENSITIVE_SHARE * abs(common) if one is not None else INSENSITIVE_SHARE
+    scale = INSENSITIVE_SHARE * _size(one, two, setting, common)
     nearest = _nearest(upper, lower, setting)
     steep = abs(slopes[unknown]) or np.nan
     return Solution(
@@ -186,6 +186,16 @@ def solution(lower: Side | None, upper: Side, setting: Setting, unknown: str) ->
         doubt.excludes,
         doubt.reasons,
     )
+
+
+def _size(one: Response | None, two: Response, setting: Setting, common: float) -> float:
+    """Return what changes with polarisation are measured by: the common polarisability; within a level what cancels."""
+    if one is None:
+        return 1.0
+    if one.partners.level.name != two.partners.level.name:
+        return abs(common)
+    parts = (two.shares(setting.frequency_mhz) - one.shares(setting.frequency_mhz))[:, :, 0] @ setting.fractions
+    return float(np.abs(parts).sum())
 
 
 def _feels(lower: Side | None, upper: Side) -> bool:

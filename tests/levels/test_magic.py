@@ -313,3 +313,11 @@ def test_single_line_has_no_tune_out() -> None:
     found = tune_outs(Side(single), make_setting(900.0), 800.0, 2000.0)
     assert found.solutions == ()
     assert "stays positive" in found.why_none
+
+
+def test_a_magic_ellipticity_is_not_insensitive_to_polarisation() -> None:
+    """|1,-1> and |2,1> at 6 G shift alike at one ellipticity only, though the change is tiny beside their shifts."""
+    found = ellipticities(Side(RB, (2, -2)), Side(RB, (4, 2)), make_setting(1064.0, 0.0, field_gauss=6.0))
+    (one,) = found.solutions
+    assert abs(one.vector_a03) < 1e-3 * abs(one.polarisability_a03)
+    assert not one.insensitive
