@@ -7,6 +7,8 @@ from pathlib import Path
 import httpx2
 import pytest
 
+from service.question import Question
+from service.routes import QUESTIONS
 from tests.service.conftest import ROOT, Server
 
 README = (Path(ROOT) / "README.md").read_text()
@@ -16,6 +18,13 @@ REQUESTS = re.findall(r"^curl .*$", README, flags=re.MULTILINE)
 def test_there_are_ten_requests() -> None:
     """The README promises ten requests."""
     assert len(REQUESTS) == 10
+
+
+def test_map_for_developers_names_every_module_of_the_library() -> None:
+    """DEVELOPERS.md says of every module of `levels` what it belongs to; the rules of the audit stand as `audit_*`."""
+    text = (Path(ROOT) / "DEVELOPERS.md").read_text()
+    modules = {path.stem for path in (Path(ROOT) / "levels").glob("*.py")} - {"__init__"}
+    assert sorted(name for name in modules if f"`{name}`" not in text and not name.startswith("audit_")) == []
 
 
 @pytest.mark.parametrize("command", REQUESTS)
@@ -30,6 +39,13 @@ def test_request_of_the_readme_answers(command: str, server: Server) -> None:
         answer = httpx2.get(address)
     assert answer.status_code == 200, answer.text[:300]
     assert re.search(r"\d\.\d", answer.text)
+
+
+@pytest.mark.parametrize("question", QUESTIONS, ids=lambda one: one.name)
+def test_table_of_requests_has_every_question(question: Question) -> None:
+    """Each question's path, or its last part behind dots, stands in the table of requests."""
+    rows = "".join(re.findall(r"^\| .*$", README, flags=re.MULTILINE))
+    assert f"/{question.path.rpartition('/')[2]}`" in rows
 
 
 def test_the_two_commands_exist_and_run() -> None:
