@@ -45,6 +45,7 @@ def docs_routes(document: Callable[[], Mapping[str, Any]], questions: Iterable[Q
     pages = {
         "/docs": (lambda: docs_page(document(), list(questions)), HTML),
         "/problems": (problems_page, HTML),
+        "/findings": (findings_page, HTML),
         "/openapi.json": (lambda: orjson.dumps(document()).decode(), "application/json"),
         "/docs/docs.css": ((FILES / "docs.css").read_text, "text/css; charset=utf-8"),
         "/docs/docs.js": ((FILES / "docs.js").read_text, "text/javascript; charset=utf-8"),
