@@ -19,12 +19,13 @@ from levels.errors import OutsideValidity, UnknownName
 from levels.fieldgrid import on_grid
 from levels.notation import format_half, format_sublevel
 from levels.quantity import Quantity
-from levels.records import Line
+from levels.records import Level, Line
 from levels.sensitivity import ENERGY, SHIFT, Spread, add_terms, movement, spread, terms_of
 from levels.sublevels import (
     HZ_PER_MHZ,
     Constants,
     Eigen,
+    Sublevels,
     as_fields,
     constants_of,
     find_sublevel,
@@ -265,11 +266,17 @@ def components(line: Line, field_gauss: ArrayLike, q: int | None = None) -> Comp
     if not pairs:
         raise UnknownName("component", f"q = {q}", hint=f"{line.name} has no pair of sublevels with this m' - m")
     below, above = sublevels(line.lower, fields), sublevels(line.upper, fields)
-    at_low = _positions(line.lower.twice_J, line.lower.twice_I, [low for low, _ in pairs])
-    at_up = _positions(line.upper.twice_J, line.upper.twice_I, [up for _, up in pairs])
+    return between(line, pairs, below, above, strengths(line, fields, pairs), bool(strength_model(line)))
+
+
+def between(
+    line: Line, pairs: list[Pair], below: Sublevels, above: Sublevels, strength: Array, strength_known: bool
+) -> Components:
+    """Join the sublevels of both ends, solved at the same fields, into the components of these pairs."""
+    at_low, at_up = _positions(below.level, [low for low, _ in pairs]), _positions(above.level, [up for _, up in pairs])
     return Components(
         line,
-        fields,
+        below.field_gauss,
         below.twice_F[at_low],
         below.twice_m[at_low],
         above.twice_F[at_up],
@@ -279,14 +286,14 @@ def components(line: Line, field_gauss: ArrayLike, q: int | None = None) -> Comp
         above.shift_mhz[:, at_up] - below.shift_mhz[:, at_low],
         above.slope_mhz_per_gauss[:, at_up] - below.slope_mhz_per_gauss[:, at_low],
         above.quadratic_hz_per_gauss2[:, at_up] - below.quadratic_hz_per_gauss2[:, at_low],
-        strengths(line, fields, pairs),
+        strength,
         tuple(zero_field_strength(line, low, up) for low, up in pairs),
-        bool(strength_model(line)),
+        strength_known,
     )
 
 
-def _positions(twice_J: int, twice_I: int, labels: list[Label]) -> NDArray[np.int64]:
-    order = {label: k for k, label in enumerate(labels_of(Constants(twice_J, twice_I)))}
+def _positions(level: Level, labels: list[Label]) -> NDArray[np.int64]:
+    order = {label: k for k, label in enumerate(labels_of(Constants(level.twice_J, level.twice_I)))}
     return np.array([order[label] for label in labels], dtype=np.int64)
 
 

@@ -17,6 +17,7 @@ from levels.components import (
     STRENGTH_TOLERANCE,
     Component,
     Components,
+    between,
     check_component,
     pairs_of,
     strength_model,
@@ -36,7 +37,7 @@ from levels.strongfield import (
     term_sublevels,
 )
 from levels.strongfield_spread import contributions, joined, spread_of
-from levels.sublevels import HZ_PER_MHZ, Constants, as_fields, find_sublevel, labels_of, zero_field_mhz
+from levels.sublevels import HZ_PER_MHZ, as_fields, find_sublevel, zero_field_mhz
 from levels.terms import Term
 
 Array = NDArray[np.float64]
@@ -145,23 +146,7 @@ def term_components(ends: Ends, field_gauss: ArrayLike, q: int | None = None) ->
     line, fields = ends.line, as_fields(field_gauss)
     pairs = _pairs(line, q)
     below, above = term_sublevels(ends.lower, fields), term_sublevels(ends.upper, fields)
-    at_low, at_up = _places(below.level, [low for low, _ in pairs]), _places(above.level, [up for _, up in pairs])
-    return Components(
-        line,
-        fields,
-        below.twice_F[at_low],
-        below.twice_m[at_low],
-        above.twice_F[at_up],
-        above.twice_m[at_up],
-        (above.twice_m[at_up] - below.twice_m[at_low]) // 2,
-        above.energy_mhz[:, at_up] - below.energy_mhz[:, at_low],
-        above.shift_mhz[:, at_up] - below.shift_mhz[:, at_low],
-        above.slope_mhz_per_gauss[:, at_up] - below.slope_mhz_per_gauss[:, at_low],
-        above.quadratic_hz_per_gauss2[:, at_up] - below.quadratic_hz_per_gauss2[:, at_low],
-        term_strengths(ends, fields, pairs),
-        tuple(zero_field_strength(line, low, up) for low, up in pairs),
-        bool(pair_ratios(ends)),
-    )
+    return between(line, pairs, below, above, term_strengths(ends, fields, pairs), bool(pair_ratios(ends)))
 
 
 def _pairs(line: Line, q: int | None) -> list[Pair]:
@@ -169,11 +154,6 @@ def _pairs(line: Line, q: int | None) -> list[Pair]:
         allowed = f"m' - m of an {line.multipole} line, from -{line.rank} to {line.rank}"
         raise OutsideValidity("polarisation", q, allowed)
     return pairs_of(line, q)
-
-
-def _places(level: Level, labels: list[Label]) -> NDArray[np.int64]:
-    order = {label: k for k, label in enumerate(labels_of(Constants(level.twice_J, level.twice_I)))}
-    return np.array([order[label] for label in labels], dtype=np.int64)
 
 
 def term_strengths(ends: Ends, fields: Array, pairs: list[Pair]) -> Array:

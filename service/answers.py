@@ -103,6 +103,16 @@ def uncertainty_columns(
     return written, doubted
 
 
+def with_uncertainties(
+    columns: Mapping[str, Column], spreads: Iterable[NDArray[Any]]
+) -> tuple[dict[str, Column], dict[str, str]]:
+    """Each column with that of its uncertainty behind it, and the reason of each uncertainty that has nulls."""
+    names = [name.replace("_", "_uncertainty_", 1) for name in columns]
+    sigma, doubted = uncertainty_columns(dict(zip(names, spreads, strict=True)))
+    pairs = zip(columns.items(), sigma.items(), strict=True)
+    return {name: column for pair in pairs for name, column in pair}, doubted
+
+
 def curated(quantity: Quantity | None, unit: str, reason: str = NOT_IN_CATALOGUE) -> dict[str, Any]:
     """A curated number with the digits as published, where they come from and what others published."""
     if quantity is None:

@@ -11,7 +11,7 @@ from levels.records import Line
 from levels.sensitivity import ENERGY, SHIFT, Spread
 from levels.strongfield_lines import term_component_spread, term_components
 from levels.uncertainty import component_spread
-from service.answers import Answer, uncertainty_columns
+from service.answers import Answer, uncertainty_columns, with_uncertainties
 from service.context import Context
 from service.formats import Column, Table
 from service.models import ANSWERED, MODEL, LineModel, ModelName, model_of_line
@@ -20,13 +20,6 @@ from service.question import Computed, Question
 from service.routes.shift import NO_CENTROID, no_frequency_spread, no_strength
 from service.routes.sublevels import ORDER
 from service.schemas import Labels, MaybeNumbers, Numbers, Shape, Tabular, Texts
-
-UNCERTAINTIES = (
-    "offset_uncertainty_MHz",
-    "shift_uncertainty_MHz",
-    "slope_uncertainty_MHz_per_G",
-    "quadratic_uncertainty_Hz_per_G2",
-)
 
 
 class ComponentsAsked(Computed):
@@ -112,22 +105,22 @@ def answer_components(context: Context, path: Mapping[str, str], asked: Componen
     line = context.line(path["atom"], asked.line)
     model = model_of_line(context, path["atom"], asked.line, asked.field, asked.model)
     found, spread = solved(line, model, asked.field, asked.polarisation)
-    sigma, doubted = uncertainty_columns(dict(zip(UNCERTAINTIES, spread.uncertainty[ORDER, 0], strict=True)))
+    numbers = {
+        "offset_MHz": found.offset_mhz[0],
+        "shift_MHz": found.shift_mhz[0],
+        "slope_MHz_per_G": found.slope_mhz_per_gauss[0],
+        "quadratic_Hz_per_G2": found.quadratic_hz_per_gauss2[0],
+    }
+    moving, doubted = with_uncertainties(numbers, spread.uncertainty[ORDER, 0])
     frequencies, missing = frequency_columns(found, spread.uncertainty[:, 0])
     missing = {**doubted, **missing}
     if not found.strength_known:
         missing["strength"] = no_strength(line)
     columns: dict[str, Column] = {
         **label_columns(found),
-        "offset_MHz": found.offset_mhz[0],
-        "offset_uncertainty_MHz": sigma["offset_uncertainty_MHz"],
+        **{name: moving.pop(name) for name in ("offset_MHz", "offset_uncertainty_MHz")},
         **frequencies,
-        "shift_MHz": found.shift_mhz[0],
-        "shift_uncertainty_MHz": sigma["shift_uncertainty_MHz"],
-        "slope_MHz_per_G": found.slope_mhz_per_gauss[0],
-        "slope_uncertainty_MHz_per_G": sigma["slope_uncertainty_MHz_per_G"],
-        "quadratic_Hz_per_G2": found.quadratic_hz_per_gauss2[0],
-        "quadratic_uncertainty_Hz_per_G2": sigma["quadratic_uncertainty_Hz_per_G2"],
+        **moving,
         "strength": found.strength[0] if found.strength_known else [None] * len(found.q),
         "strength_at_zero_field": [str(part) if found.strength_known else "" for part in found.zero_field_strength],
     }

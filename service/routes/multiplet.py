@@ -9,13 +9,13 @@ from levels.crossings import Crossing, crossings
 from levels.errors import OutsideValidity
 from levels.paschenback import whole_term
 from levels.terms import Term, alone, term_of
-from service.answers import Answer, uncertainty_columns
+from service.answers import Answer, with_uncertainties
 from service.context import Context
 from service.formats import Column, Table
 from service.models import term_inputs, term_warnings
 from service.parameters import FieldGauss, LargestField, Name
 from service.question import Computed, Question
-from service.routes.sublevels import ORDER, UNCERTAINTIES
+from service.routes.sublevels import ORDER
 from service.schemas import Labels, MaybeNumbers, Numbers, Shape, Tabular, Texts
 
 DOUBTED_FIELD = "a constant without a stated uncertainty (uncertainty_excludes) could outweigh the others"
@@ -98,20 +98,18 @@ def answer_multiplet(context: Context, path: Mapping[str, str], asked: Multiplet
     level = context.level(path["atom"], asked.level)
     term = term_of(context.atom(path["atom"]), level)
     found = whole_term(term, asked.field)
-    spread = found.spread.uncertainty[ORDER, 0]
-    sigma, doubted = uncertainty_columns(dict(zip(UNCERTAINTIES, spread, strict=True)))
+    numbers = {
+        "energy_MHz": found.energy_mhz,
+        "shift_MHz": found.shift_mhz,
+        "slope_MHz_per_G": found.slope_mhz_per_gauss,
+        "quadratic_Hz_per_G2": found.quadratic_hz_per_gauss2,
+    }
+    moving, doubted = with_uncertainties(numbers, found.spread.uncertainty[ORDER, 0])
     columns: dict[str, Column] = {
         "level": [term.levels[state.position].name for state in found.states],
         "F": [state.twice_F / 2 for state in found.states],
         "m": [state.twice_m / 2 for state in found.states],
-        "energy_MHz": found.energy_mhz,
-        UNCERTAINTIES[0]: sigma[UNCERTAINTIES[0]],
-        "shift_MHz": found.shift_mhz,
-        UNCERTAINTIES[1]: sigma[UNCERTAINTIES[1]],
-        "slope_MHz_per_G": found.slope_mhz_per_gauss,
-        UNCERTAINTIES[2]: sigma[UNCERTAINTIES[2]],
-        "quadratic_Hz_per_G2": found.quadratic_hz_per_gauss2,
-        UNCERTAINTIES[3]: sigma[UNCERTAINTIES[3]],
+        **moving,
         "mean_L_z": found.mean_L_z,
         "mean_S_z": found.mean_S_z,
     }

@@ -10,7 +10,7 @@ from levels.strongfield import term_sublevels
 from levels.strongfield_spread import term_spread
 from levels.sublevels import Sublevels, sublevels
 from levels.uncertainty import sublevel_spread
-from service.answers import Answer, uncertainty_columns
+from service.answers import Answer, with_uncertainties
 from service.context import Context
 from service.formats import Column, Table
 from service.models import ANSWERED, MODEL, ModelName, model_of_level
@@ -18,12 +18,6 @@ from service.parameters import FieldGauss, Name
 from service.question import Computed, Question
 from service.schemas import Labels, MaybeNumbers, Numbers, Shape, Tabular
 
-UNCERTAINTIES = (
-    "energy_uncertainty_MHz",
-    "shift_uncertainty_MHz",
-    "slope_uncertainty_MHz_per_G",
-    "quadratic_uncertainty_Hz_per_G2",
-)
 ORDER = [ENERGY, SHIFT, SLOPE, QUADRATIC]
 
 
@@ -81,17 +75,16 @@ def answer_sublevels(context: Context, path: Mapping[str, str], asked: Sublevels
         found, spread = sublevels(level, asked.field), sublevel_spread(level, asked.field)
     else:
         found, spread = term_sublevels(model.term, asked.field), term_spread(model.term, asked.field)
-    sigma, doubted = uncertainty_columns(dict(zip(UNCERTAINTIES, spread.uncertainty[ORDER, 0], strict=True)))
+    numbers = {
+        "energy_MHz": found.energy_mhz[0],
+        "shift_MHz": found.shift_mhz[0],
+        "slope_MHz_per_G": found.slope_mhz_per_gauss[0],
+        "quadratic_Hz_per_G2": found.quadratic_hz_per_gauss2[0],
+    }
+    moving, doubted = with_uncertainties(numbers, spread.uncertainty[ORDER, 0])
     columns: dict[str, Column] = {
         **label_columns(found),
-        "energy_MHz": found.energy_mhz[0],
-        "energy_uncertainty_MHz": sigma["energy_uncertainty_MHz"],
-        "shift_MHz": found.shift_mhz[0],
-        "shift_uncertainty_MHz": sigma["shift_uncertainty_MHz"],
-        "slope_MHz_per_G": found.slope_mhz_per_gauss[0],
-        "slope_uncertainty_MHz_per_G": sigma["slope_uncertainty_MHz_per_G"],
-        "quadratic_Hz_per_G2": found.quadratic_hz_per_gauss2[0],
-        "quadratic_uncertainty_Hz_per_G2": sigma["quadratic_uncertainty_Hz_per_G2"],
+        **moving,
         "moment_muB": np.asarray(found.moment_mu_b[0]),
     }
     return Answer(
