@@ -1,4 +1,4 @@
-"""The bench page and its files, served as ready bytes from the service's own origin."""
+"""The pages and their files, served as ready bytes from the service's own origin."""
 
 from collections.abc import Iterable
 from pathlib import Path
@@ -8,6 +8,7 @@ from starlette.routing import Route
 from service.docs import HTML, ready
 
 FILES = Path(__file__).parent / "page"
+PAGES = {"/": "index.html", "/scheme": "scheme.html"}
 KINDS = {
     ".css": "text/css; charset=utf-8",
     ".js": "text/javascript; charset=utf-8",
@@ -16,8 +17,8 @@ KINDS = {
 
 
 def bench_routes() -> list[Route]:
-    """The page at the root, and every style, script and drawing below /page."""
-    pages = [Route("/", ready((FILES / "index.html").read_text, HTML), name="bench")]
+    """The page at the root, that of schemes, and every style, script and drawing below /page."""
+    pages = [Route(path, ready((FILES / name).read_text, HTML), name=path) for path, name in PAGES.items()]
     return [*pages, *(_file_route(path) for path in served_files())]
 
 
