@@ -13,6 +13,7 @@ from urllib.parse import quote
 import httpx2
 from pydantic import BaseModel
 
+from service import catalogue_shapes, search_shapes
 from service.lightshift_shapes import LightshiftAnswered, PolarisabilityAnswered
 from service.plan_shapes import PlanAnswered
 from service.problems import ProblemBody
@@ -20,7 +21,6 @@ from service.repump_shapes import RepumpAnswered
 from service.routes import (
     angular,
     book,
-    catalogue,
     components,
     cooling,
     evolution,
@@ -38,7 +38,6 @@ from service.routes import (
     profile,
     remedies,
     scan,
-    search,
     shift,
     slower,
     strengths,
@@ -77,41 +76,41 @@ class Client:
         """Close the connection."""
         self._http.close()
 
-    def atoms(self) -> catalogue.AtomsAnswered:
+    def atoms(self) -> catalogue_shapes.AtomsAnswered:
         """Every isotope."""
-        return self._get("/v1/atoms", {}, catalogue.AtomsAnswered)
+        return self._get("/v1/atoms", {}, catalogue_shapes.AtomsAnswered)
 
-    def atom(self, atom: str) -> catalogue.AtomAnswered:
+    def atom(self, atom: str) -> catalogue_shapes.AtomAnswered:
         """One isotope."""
-        return self._get(_atom(atom), {}, catalogue.AtomAnswered)
+        return self._get(_atom(atom), {}, catalogue_shapes.AtomAnswered)
 
-    def levels(self, atom: str) -> catalogue.LevelsAnswered:
+    def levels(self, atom: str) -> catalogue_shapes.LevelsAnswered:
         """Every level of an isotope."""
-        return self._get(f"{_atom(atom)}/levels", {}, catalogue.LevelsAnswered)
+        return self._get(f"{_atom(atom)}/levels", {}, catalogue_shapes.LevelsAnswered)
 
-    def lines(self, atom: str) -> catalogue.LinesAnswered:
+    def lines(self, atom: str) -> catalogue_shapes.LinesAnswered:
         """Every line of an isotope."""
-        return self._get(f"{_atom(atom)}/lines", {}, catalogue.LinesAnswered)
+        return self._get(f"{_atom(atom)}/lines", {}, catalogue_shapes.LinesAnswered)
 
     def sources(self) -> Answered:
         """Every publication, with the values that rest on it."""
         return self._get("/v1/sources", {}, Answered)
 
-    def source(self, id: str) -> catalogue.SourceAnswered:
+    def source(self, id: str) -> catalogue_shapes.SourceAnswered:
         """One publication, by its key in any answer's `sources`."""
-        return self._get(f"/v1/sources/{quote(id, safe='')}", {}, catalogue.SourceAnswered)
+        return self._get(f"/v1/sources/{quote(id, safe='')}", {}, catalogue_shapes.SourceAnswered)
 
-    def release(self) -> catalogue.ReleaseAnswered:
+    def release(self) -> catalogue_shapes.ReleaseAnswered:
         """The data release."""
-        return self._get("/v1/release", {}, catalogue.ReleaseAnswered)
+        return self._get("/v1/release", {}, catalogue_shapes.ReleaseAnswered)
 
-    def find_lines(self, **asked: Any) -> search.LinesFound:
+    def find_lines(self, **asked: Any) -> search_shapes.LinesFound:
         """Lines over all species: `near`, `within`, `unit`, `medium`, `species`, `min_width`, `lower` and others."""
-        return self._get("/v1/lines", asked, search.LinesFound)
+        return self._get("/v1/lines", asked, search_shapes.LinesFound)
 
-    def find_levels(self, **asked: Any) -> search.LevelsFound:
+    def find_levels(self, **asked: Any) -> search_shapes.LevelsFound:
         """Levels over all species: `level`, `term`, `J`, `min_lifetime` and others."""
-        return self._get("/v1/levels", asked, search.LevelsFound)
+        return self._get("/v1/levels", asked, search_shapes.LevelsFound)
 
     def book(self) -> book.BookAnswered:
         """The whole book, as published."""
