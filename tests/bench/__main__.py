@@ -12,7 +12,7 @@ from service.cli import FEW_THREADS
 for name in FEW_THREADS:
     os.environ.setdefault(name, "1")
 
-from tests.bench import algebra, lightshift, planning, requests, spectra, start, startup, steady, strongfield  # noqa: E402 - numpy reads the environment when imported
+from tests.bench import algebra, lightshift, planning, requests, scans, spectra, start, startup, steady, strongfield  # noqa: E402 - numpy reads the environment when imported
 
 BENCHMARKS = {
     "a": requests.run,
@@ -21,6 +21,7 @@ BENCHMARKS = {
     "d": start.run,
     "e": steady.run,
     "f": startup.run,
+    "g": scans.run,
     "l": lightshift.run,
     "p": planning.run,
     "s": strongfield.run,
