@@ -28,6 +28,7 @@ from levels.records import Level
 from levels.schema import DataFile, LineTable
 from levels.sums import signed_sum, spread_of
 
+ALONE = 0.999
 Whose = int | str  # a mass number or "natural"
 Levels = Mapping[Whose, Mapping[str, Level]]
 
@@ -178,7 +179,7 @@ def best_path(edges: Iterable[Edge], start: str, end: str, without: str = "") ->
     return None
 
 
-def pathsigned_sum(path: Iterable[tuple[Edge, int]]) -> Quantity:
+def path_sum(path: Iterable[tuple[Edge, int]]) -> Quantity:
     """The frequency in MHz that a chain of intervals adds up to."""
     steps = list(path)
     if len(steps) == 1 and steps[0][1] == 1:
@@ -207,7 +208,7 @@ def line_centroids(data: DataFile, levels: Levels) -> dict[int, dict[str, Centro
                 found = _centroid(own[name], edges[source], line, source)
                 if found:
                     has_shift = any(entry.isotope == isotope for entry in line.shift)
-                    result[isotope][name] = _told(found, isotope, source, has_shift)
+                    result[isotope][name] = _told(found, isotope, source, has_shift, _is_alone(data, isotope))
                     break
     return result
 
@@ -249,18 +250,28 @@ def _centroid(own: Mapping[Whose, Quantity], edges: list[Edge], line: LineTable,
     if source in own:
         return own[source]
     path = best_path(edges, line.lower, line.upper)
-    return pathsigned_sum(path) if path else None
+    return path_sum(path) if path else None
 
 
-def _told(quantity: Quantity, isotope: int, source: Whose, has_shift: bool) -> Centroid:
-    """Say whose number it is; another isotope's keeps no uncertainty, since the shift from it is not known."""
+def _is_alone(data: DataFile, isotope: int) -> bool:
+    """Whether the natural element is this isotope, to one part in a thousand."""
+    abundance = data.isotopes[isotope].abundance
+    return abundance is not None and in_unit(abundance.quantity(), "1").value >= ALONE
+
+
+def _told(quantity: Quantity, isotope: int, source: Whose, has_shift: bool, alone: bool) -> Centroid:
+    """Say whose number it is; a borrowed one keeps no uncertainty, since the shift from it is not known.
+
+    Only where the natural mixture is this isotope alone, or nearly, its number is the isotope's.
+    """
     if source == isotope:
         return Centroid(quantity, str(isotope))
     if source == "any":
-        return Centroid(quantity, "natural", "difference of energies that belong to different isotopes")
+        borrowed = replace(quantity, uncertainty=None)
+        return Centroid(borrowed, "natural", "difference of energies that belong to different isotopes")
     owner = "the natural mixture" if source == "natural" else f"mass number {source}"
     why = TOO_LITTLE if has_shift and source == "natural" else ""
-    if source != "natural":
+    if source != "natural" or not alone:
         quantity = replace(quantity, uncertainty=None)
     return Centroid(quantity, str(source), f"frequency of {owner}: this isotope's own is not published{why}")
 
@@ -268,4 +279,4 @@ def _told(quantity: Quantity, isotope: int, source: Whose, has_shift: bool) -> C
 def level_energy(data: DataFile, edges: list[Edge], name: str) -> Quantity | None:
     """The energy in cm-1 above the ground level that lines add up to, for a level whose energy is not tabulated."""
     path = best_path(edges, data.element.ground, name)
-    return wavenumber_of(pathsigned_sum(path)) if path else None
+    return wavenumber_of(path_sum(path)) if path else None
