@@ -1,6 +1,5 @@
 """The shapes of isotopes, levels, lines, publications and the release, as the catalogue answers them."""
 
-from typing import Any
 
 from pydantic import Field
 
@@ -126,7 +125,7 @@ class SourceAnswered(Answered):
     id: str
     citation: str
     doi: str
-    csl: dict[str, Any] = Field(description="the entry as a CSL-JSON item")
+    csl_json: str = Field(description="the entry as a CSL-JSON item, as text: its own keys are not identifiers")
 
 
 class TallyRecord(Shape):

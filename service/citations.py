@@ -1,5 +1,6 @@
 """Publications as one-line citations, from the catalogue's CSL-JSON bibliography."""
 
+import json
 from collections.abc import Mapping
 from dataclasses import dataclass
 from typing import Any
@@ -15,6 +16,11 @@ class Publication:
     citation: str
     doi: str
     csl: Mapping[str, Any]
+
+    @property
+    def csl_json(self) -> str:
+        """The CSL-JSON item as text."""
+        return json.dumps(self.csl, ensure_ascii=False)
 
 
 def publication(item: Mapping[str, Any]) -> Publication:

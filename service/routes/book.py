@@ -1,7 +1,6 @@
 """`book`: the whole catalogue as one download, as JSON or CSV of every value, and as a zip with everything."""
 
 from collections.abc import Mapping
-from typing import Any
 
 from pydantic import Field
 from starlette.requests import Request
@@ -89,7 +88,7 @@ class PublicationRow(Shape):
     id: str
     citation: str
     doi: str
-    csl: dict[str, Any] = Field(description="the entry as a CSL-JSON item")
+    csl_json: str = Field(description="the entry as a CSL-JSON item, as text: its own keys are not identifiers")
 
 
 class ValueColumns(Shape):
@@ -133,7 +132,9 @@ def answer_book(context: Context, path: Mapping[str, str], asked: BookAsked) -> 
         "isotopes": isotope_rows(catalogue),
         "levels": level_rows(catalogue),
         "lines": line_rows(catalogue),
-        "publications": [{**row, "csl": dict(publications[row["id"]].csl)} for row in publication_rows(publications)],
+        "publications": [
+            {**row, "csl_json": publications[row["id"]].csl_json} for row in publication_rows(publications)
+        ],
     }
     values = table_of(value_rows(catalogue)).columns
     return Answer(content, with_reasons(values, {"uncertainty": "none is stated"}))

@@ -194,7 +194,7 @@ def source(context: Context, path: Mapping[str, str], asked: Asked) -> Answer:
         raise UnknownName("source", path["id"], nearest(path["id"], context.publications))
     mine = ((name, value) for name, value in everything(context) if known.id in value.sources)
     used = [(name, replace(value, source=known.id)) for name, value in mine]
-    content = {"id": known.id, "citation": known.citation, "doi": known.doi, "csl": dict(known.csl)}
+    content = {"id": known.id, "citation": known.citation, "doi": known.doi, "csl_json": known.csl_json}
     return Answer(content, records_table(sources_of(used, context.publications)), columnar=False, used=used)
 
 

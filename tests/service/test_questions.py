@@ -88,10 +88,9 @@ def test_keys_are_identifiers_and_records_alike(client: TestClient, question: Qu
 
     def check(value: Any, path: str) -> None:
         if isinstance(value, dict):
-            assert path.endswith(".csl") or all(key.isidentifier() for key in value), (path, list(value))
+            assert all(key.isidentifier() for key in value), (path, list(value))
             for key, part in value.items():
-                if not path.endswith(".csl"):
-                    check(part, f"{path}.{key}")
+                check(part, f"{path}.{key}")
         elif isinstance(value, list):
             assert len({tuple(part) for part in value if isinstance(part, dict)}) <= 1, path
             for part in value:
