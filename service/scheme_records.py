@@ -119,7 +119,7 @@ def manifold_records(verdict: Verdict) -> list[dict[str, Any]]:
             "name": manifold.text(),
             "sublevels": manifold.size,
             "beams": list(manifold.names),
-            "pump": plain(manifold.pump_per_us * 1e6, "1/s"),
+            "pump": plain(manifold.pump_per_us * 1e6, "s-1"),
             "dark_states": len(manifold.dark),
         }
         for manifold in verdict.manifolds
@@ -135,7 +135,7 @@ def dark_records(verdict: Verdict) -> list[dict[str, Any]]:
             "text": state.text(),
             "held": plain(held_in(verdict.outcome, state), "1"),
             "mixing": plain(state.mixing_mhz, "MHz"),
-            "residual": plain(state.residual_per_us * 1e6, "1/s"),
+            "residual": plain(state.residual_per_us * 1e6, "s-1"),
             "stationary": state.is_stationary,
         }
         for number, (text, state) in enumerate(_dark_states(verdict), 1)

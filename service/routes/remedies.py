@@ -93,7 +93,7 @@ def remedies(context: Context, path: Mapping[str, str], asked: RemediesAsked) ->
         {
             "atom": lab.setup.atom.isotope.name,
             "beam": beam.name,
-            "scattering": plain(solve(light).scattering_per_s, "1/s"),
+            "scattering": plain(solve(light).scattering_per_s, "s-1"),
         },
         Table(columns(table), dict.fromkeys(names_of_columns[1:5], "what this remedy does not change")),
         used=used,

@@ -86,10 +86,10 @@ def _content(lab: Laboratory, verdict: Verdict, asked: VerdictAsked) -> dict[str
         "model_reason": light.reason,
         "unique": outcome.unique,
         "field": field_record(drive.axes),
-        "scattering": plain(outcome.scattering_per_s, "1/s"),
-        "scattering_by_rates": plain(rates, "1/s") if rates is not None else plain(None, "1/s", BY_RATES),
+        "scattering": plain(outcome.scattering_per_s, "s-1"),
+        "scattering_by_rates": plain(rates, "s-1") if rates is not None else plain(None, "s-1", BY_RATES),
         "scattering_by_line": write.line_columns(outcome),
-        "lost": plain(outcome.lost_per_s, "1/s"),
+        "lost": plain(outcome.lost_per_s, "s-1"),
         "beams": [write.beam_record(lab.setup.atom, part, driven, one, asked.linewidths) for part, driven, one in rows],
         "polarisations": joined(polarised, PolarisationColumns.model_fields),
         "components": joined(

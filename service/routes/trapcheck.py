@@ -113,7 +113,7 @@ def _record(axis: AxisCheck) -> dict[str, Any]:
         "frequency": plain(
             math.sqrt(spring) / (2 * math.pi) if restores else None, "Hz", LINEAR if restores else "nothing restores"
         ),
-        "damping": plain(axis.damping_per_s, "1/s", LINEAR),
+        "damping": plain(axis.damping_per_s, "s-1", LINEAR),
         "spring_if_reversed": plain(axis.if_reversed_per_s2, "1/s2", LINEAR),
         "traps": axis.traps,
         "traps_if_reversed": axis.traps_reversed,
