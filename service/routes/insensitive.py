@@ -1,6 +1,6 @@
 """`insensitive`: fields where the difference of two sublevels does not move."""
 
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 
 from pydantic import Field
 
@@ -64,9 +64,19 @@ def answer_insensitive(context: Context, path: Mapping[str, str], asked: Insensi
         {"atom": level.atom, "level": level.name, "upper_level": upper.name},
         _table(points),
         used=grounds.basis,
-        warnings=grounds.warnings(asked.max_field),
+        warnings=[*grounds.warnings(asked.max_field), *nothing_stationary(points, asked.max_field, asked.max_dm)],
         uncertainty_excludes=list(dict.fromkeys(name for point in points for name in point.spread.excludes)),
     )
+
+
+def nothing_stationary(points: Sequence[object], max_field_gauss: float, max_dm: int) -> list[str]:
+    """Say in words what an empty table says."""
+    if points:
+        return []
+    return [
+        f"no pair with m differing by {max_dm} at most is stationary from 0 to {max_field_gauss:g} G: "
+        "each moves all the way, or there is only one sublevel"
+    ]
 
 
 def _table(points: list[Insensitive]) -> Table:

@@ -102,6 +102,7 @@ def answer_pairs(context: Context, path: Mapping[str, str], asked: PairsAsked) -
         warnings=[
             *context.level_grounds(atom, *names).warnings(max((pair.field_gauss for pair in found), default=0.0)),
             *(light_warnings(*sides) if setting else ()),
+            *([] if found else [f"no pair with m differing by {asked.max_dm} at most in this range of fields"]),
         ],
     )
 

@@ -150,6 +150,14 @@ def test_shift_of_stretched_component(client: TestClient) -> None:
     assert answer["frequency"]["value"] == pytest.approx(expected, abs=1e-12)
 
 
+def test_an_empty_table_of_pairs_says_why(client: TestClient) -> None:
+    """A level of one sublevel has no pair, and one whose sublevels only move apart has none: the answer says so."""
+    for path in ("88Sr/insensitive?level=5s2_1S0", "40Ca%2B/insensitive?level=4s_2S1/2&max_field=10"):
+        answer = client.get(f"/v1/atoms/{path}").json()
+        assert answer["columns"]["field_G"] == []
+        assert any("no pair" in warning for warning in answer["warnings"])
+
+
 def test_clock_pair_is_found(client: TestClient) -> None:
     """87Rb |1,-1> and |2,1> are field-insensitive at 3.2289 G with 431.36 Hz/G2 (published: issue's check list)."""
     columns = client.get("/v1/atoms/87Rb/insensitive?level=5S1/2&max_field=10").json()["columns"]
