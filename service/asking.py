@@ -223,7 +223,7 @@ def validated(question: Question, given: dict[str, Any]) -> Asked:
         asked: Asked = question.asked.__pydantic_validator__.validate_python(given)
         return asked
     except ValidationError as error:
-        raise of_validation(error, lambda name: str(getattr(fields.get(name), "description", None) or "")) from None
+        raise of_validation(error, question.asked) from None
 
 
 def refuse_recalled(answer: Answer) -> None:

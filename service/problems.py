@@ -7,7 +7,7 @@ Every problem has the same members in the same order; what does not apply is emp
 import difflib
 from collections.abc import Callable, Iterable, Sequence
 from dataclasses import dataclass
-from typing import Any
+from typing import Any, get_args
 
 import orjson
 from pydantic import BaseModel, Field, ValidationError
@@ -263,10 +263,10 @@ def _of_outside_validity(error: OutsideValidity) -> Problem:
     return Problem("invalid-parameter", str(error), parameter=error.parameter, given=error.given, allowed=error.allowed)
 
 
-def of_validation(error: ValidationError, describe: Callable[[str], str] = str) -> Problem:
-    """The problem of a request that does not fit its model; `describe` says what a parameter may be."""
+def of_validation(error: ValidationError, model: type[BaseModel] | None = None) -> Problem:
+    """The problem of a request that does not fit its model; the model says what its members may be."""
     items = error.errors(include_url=False)[:MOST_FAULTS]
-    faults = [_fault(item, describe) for item in items]
+    faults = [_fault(item, model) for item in items]
     first, kind = faults[0], items[0]["type"]
     name = {"missing": "missing-parameter", "extra_forbidden": "unknown-parameter"}.get(kind, "invalid-parameter")
     return Problem(
@@ -279,15 +279,37 @@ def of_validation(error: ValidationError, describe: Callable[[str], str] = str) 
     )
 
 
-def _fault(item: Any, describe: Callable[[str], str]) -> Fault:
+def _fault(item: Any, model: type[BaseModel] | None) -> Fault:
     parameter = shown(".".join(str(part) for part in item["loc"]) or "body")
     cause = item.get("ctx", {}).get("error")
+    members = members_at(model, item["loc"][:-1])
     if item["type"] == "missing":
-        return Fault(parameter=parameter, given="", allowed=describe(parameter), detail=f"{parameter} is needed")
+        allowed = members.get(str(item["loc"][-1]), "")
+        return Fault(parameter=parameter, given="", allowed=allowed, detail=f"{parameter} is needed")
     given = shown(item["input"])
+    if item["type"] == "extra_forbidden":
+        allowed = ", ".join(members)
+        known = f"; its place takes {allowed}" if members else ""
+        return Fault(parameter=parameter, given=given, allowed=allowed, detail=f"{parameter} is not known{known}")
     if isinstance(cause, OutsideValidity):
         return _told(parameter, given, cause.allowed)
     return _told(parameter, given, str(item["msg"]).removeprefix("Value error, "))
+
+
+def members_at(model: type[BaseModel] | None, place: Sequence[int | str]) -> dict[str, str]:
+    """The members that a request may have at a place below its model, with their descriptions."""
+    for part in place:
+        if model is None or isinstance(part, int):
+            continue
+        field = model.model_fields.get(part)
+        model = None if field is None else _model_in(field.annotation)
+    return {} if model is None else {name: field.description or "" for name, field in model.model_fields.items()}
+
+
+def _model_in(annotation: Any) -> type[BaseModel] | None:
+    if isinstance(annotation, type) and issubclass(annotation, BaseModel):
+        return annotation
+    return next(filter(None, map(_model_in, get_args(annotation))), None)
 
 
 def _told(parameter: str, given: str, allowed: str) -> Fault:

@@ -261,3 +261,15 @@ def test_given_text_is_shortened_and_printable() -> None:
     assert shown("a\r\nb\x00\ud800") == "a\ufffd\ufffdb\ufffd\ufffd"
     assert len(shown("x" * 1000)) == 80
     assert json.loads(Problem("internal-error", "a\x00b").encode("/\ud800", ""))["detail"] == "a\ufffdb"
+
+
+def test_a_member_unknown_inside_a_body_names_what_its_place_takes(client: TestClient) -> None:
+    """A wrong member of a beam is told with the members that a beam has."""
+    body = {
+        "atom": "87Rb",
+        "field": [0, 0, 1],
+        "beams": [{"name": "a", "line": "780", "direction": [0, 0, 1], "colour": 1}],
+    }
+    problem = client.post("/v1/scheme", json=body).json()
+    fault = next(item for item in (problem, *problem["errors"]) if item["parameter"] == "beams.0.colour")
+    assert {"polarisation", "detuning"} <= set(fault["allowed"].split(", "))
