@@ -29,7 +29,7 @@ from levels.rates import Rates, rates_of, steady_populations
 
 Array = NDArray[np.float64]
 SMALL_SHIFT_WIDTHS = 0.1
-LARGEST_GRADIENT = 1e4  # G/cm
+SMALLEST_GRADIENT, LARGEST_GRADIENT = 1e-6, 1e4  # G/cm
 NOTABLE_SHARE = 1e-3  # of all beams' pushes per natural width of shift; below it a force is called zero
 
 
@@ -129,8 +129,9 @@ def check_trap(
 
     The gradient is d(B along the coil axis)/d(position along it), its sign that of the coils' current sense.
     """
-    if not 0.0 < abs(gradient_gauss_per_cm) <= LARGEST_GRADIENT:
-        raise OutsideValidity("gradient", gradient_gauss_per_cm, f"not zero, up to {LARGEST_GRADIENT:g} G/cm in size")
+    if not SMALLEST_GRADIENT <= abs(gradient_gauss_per_cm) <= LARGEST_GRADIENT:
+        allowed = f"from {SMALLEST_GRADIENT:g} to {LARGEST_GRADIENT:g} G/cm in size"
+        raise OutsideValidity("gradient", gradient_gauss_per_cm, allowed)
     trap = _Trap(
         scheme, gradient_gauss_per_cm, as_direction("coil axis", coil_axis), ideal_repump, _scales(scheme, ideal_repump)
     )

@@ -10,13 +10,14 @@ from dataclasses import dataclass, replace
 import numpy as np
 from numpy.typing import NDArray
 
-from levels.beams import Beam
+from levels.beams import LARGEST_INTENSITY, LARGEST_OFFSET_MHZ, Beam
 from levels.errors import OutsideValidity
 from levels.geometry import Axes, axes_of, direction_from_angles
 from levels.jones import Ellipse, Plate, ellipse_of
 from levels.purity import tilted
 from levels.remedies import plane_of
 from levels.setup import BeamSetup, Optics, Setup, jones_of
+from levels.sublevels import LARGEST_FIELD_GAUSS
 
 Array = NDArray[np.float64]
 MOST_AXES = 3
@@ -24,41 +25,58 @@ MOST_AXES = 3
 
 @dataclass(frozen=True, slots=True)
 class Parameter:
-    """One thing that a scan may change: `of` the field, a beam, or the field with respect to a beam."""
+    """One thing that a scan may change, between two bounds: `of` the field, a beam, or the field as a beam sees it."""
 
     name: str
     unit: str
     of: str
+    low: float
+    high: float
     meaning: str
 
 
+TURNS = 100 * 360.0
 PARAMETERS = {
     row.name: row
     for row in (
-        Parameter("field_magnitude", "G", "field", "size of the field, signed along its direction"),
-        Parameter("field_polar", "deg", "field", "polar angle of the field from the laboratory z"),
-        Parameter("field_azimuth", "deg", "field", "azimuth of the field around the laboratory z, from x towards y"),
-        Parameter("misalignment", "deg", "field", "angle by which the field leaves its direction"),
         Parameter(
-            "field_from_polarisation",
-            "deg",
-            "field and beam",
+            "field_magnitude", "G", "field", -LARGEST_FIELD_GAUSS, LARGEST_FIELD_GAUSS,
+            "size of the field, signed along its direction",
+        ),
+        Parameter("field_polar", "deg", "field", -TURNS, TURNS, "polar angle of the field from the laboratory z"),
+        Parameter(
+            "field_azimuth", "deg", "field", -TURNS, TURNS,
+            "azimuth of the field around the laboratory z, from x towards y",
+        ),
+        Parameter("misalignment", "deg", "field", -TURNS, TURNS, "angle by which the field leaves its direction"),
+        Parameter(
+            "field_from_polarisation", "deg", "field and beam", -TURNS, TURNS,
             "angle of the field from the long axis of the beam's polarisation, towards the beam's direction",
         ),
-        Parameter("detuning", "MHz", "beam", "detuning, from what the beam's description counts it from"),
-        Parameter("intensity", "mW/cm2", "beam", "intensity"),
-        Parameter("saturation", "1", "beam", "intensity over the saturation intensity"),
-        Parameter("power", "mW", "beam", "power, with the waist as described"),
-        Parameter("linewidth", "MHz", "beam", "full width of the laser's line"),
-        Parameter("linear", "deg", "beam", "angle of linear polarisation from the first transverse axis"),
-        Parameter("ellipticity", "deg", "beam", "from -45 (helicity -) to 45, with the azimuth kept"),
-        Parameter("azimuth", "deg", "beam", "azimuth of the polarisation's long axis, with the ellipticity kept"),
-        Parameter("impurity", "1", "beam", "share of the intensity in the orthogonal polarisation"),
-        Parameter("polariser", "deg", "beam", "angle of the polariser in front of the wave plates"),
-        Parameter("plate", "deg", "beam", "fast axis of one of the beam's wave plates"),
-        Parameter("angle_to_field", "deg", "beam", "angle of the beam from the field"),
+        Parameter(
+            "detuning", "MHz", "beam", -LARGEST_OFFSET_MHZ, LARGEST_OFFSET_MHZ,
+            "detuning, from what the beam's description counts it from",
+        ),
+        Parameter("intensity", "mW/cm2", "beam", 0.0, LARGEST_INTENSITY, "intensity"),
+        Parameter("saturation", "1", "beam", 0.0, 1e12, "intensity over the saturation intensity"),
+        Parameter("power", "mW", "beam", 0.0, LARGEST_INTENSITY, "power, with the waist as described"),
+        Parameter("linewidth", "MHz", "beam", 0.0, LARGEST_OFFSET_MHZ, "full width of the laser's line"),
+        Parameter(
+            "linear", "deg", "beam", -TURNS, TURNS, "angle of linear polarisation from the first transverse axis"
+        ),
+        Parameter("ellipticity", "deg", "beam", -45.0, 45.0, "from -45 (helicity -) to 45, with the azimuth kept"),
+        Parameter(
+            "azimuth", "deg", "beam", -TURNS, TURNS,
+            "azimuth of the polarisation's long axis, with the ellipticity kept",
+        ),
+        Parameter("impurity", "1", "beam", 0.0, 1.0, "share of the intensity in the orthogonal polarisation"),
+        Parameter(
+            "polariser", "deg", "beam", -TURNS, TURNS, "angle of the polariser in front of the wave plates"
+        ),
+        Parameter("plate", "deg", "beam", -TURNS, TURNS, "fast axis of one of the beam's wave plates"),
+        Parameter("angle_to_field", "deg", "beam", -TURNS, TURNS, "angle of the beam from the field"),
     )
-}
+}  # fmt: skip
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -95,6 +113,10 @@ def _check_axis(setup: Setup, axis: Axis, where: str) -> None:
         raise OutsideValidity(f"{where}.beam", axis.beam, f"nothing: {row.name} is of the field, not of a beam")
     if axis.values.ndim != 1 or not axis.values.size or not np.all(np.isfinite(axis.values)):
         raise OutsideValidity(f"{where}.values", f"{axis.values.size} values", "finite values, at least one")
+    low, high = float(axis.values.min()), float(axis.values.max())
+    if low < row.low or high > row.high:
+        given = f"{low if low < row.low else high:g}"
+        raise OutsideValidity(f"{where}.values", given, f"from {row.low:g} to {row.high:g} {row.unit}")
 
 
 def varied_field(axes: Axes, beams: Sequence[Beam], values: Sequence[tuple[Axis, float]]) -> Array:

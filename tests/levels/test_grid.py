@@ -186,7 +186,7 @@ def test_start_populations_count_where_they_decide() -> None:
         ((axis("linear", np.nan, beam="blue"),), {}, "axes.0.values"),
         ((axis("linear", 0.0, beam="blue"), axis("linear", 1.0, beam="blue")), {}, "axes"),
         ((axis("field_polar", 0.0), axis("field_from_polarisation", 1.0, beam="red")), {}, "axes"),
-        ((axis("ellipticity", 0.0, 60.0, beam="blue"),), {}, "beams.0.ellipticity"),
+        ((axis("ellipticity", 0.0, 60.0, beam="blue"),), {}, "axes.0.values"),
         ((axis("power", 1.0, beam="blue"),), {}, "waist"),
         ((axis("plate", 1.0, beam="blue"),), {}, "plate"),
         ((axis("polariser", 1.0, beam="blue"),), {}, "polarisation"),
