@@ -33,7 +33,7 @@ export function findings(answer, list, verdict) {
   const problems = answer.findings.filter(({ severity }) => severity === "problem").length;
   verdict.textContent = answer.works ? "No problem found." : `${problems} ${problems === 1 ? "problem" : "problems"} found.`;
   list.replaceChildren(...answer.findings.map(({ code, severity, text, change }) => element("li", [
-    element("span", severity, { class: "severity" }), text, element("code", code), ...(change ? [element("span", `What would change it: ${change}`, { class: "change" })] : []),
+    element("span", severity, { class: "severity" }), text, element("a", element("code", code), { href: `findings#${code}` }), ...(change ? [element("span", `What would change it: ${change}`, { class: "change" })] : []),
   ], { class: severity })));
 }
 
