@@ -6,6 +6,7 @@ that all decays of one upper sublevel to the lower level sum to 1; the nuclear s
 line's centroid, shifts from the same component at zero field.
 """
 
+import math
 from dataclasses import dataclass
 from fractions import Fraction
 from functools import lru_cache
@@ -75,18 +76,20 @@ class Component:
     @property
     def frequency_mhz(self) -> float | None:
         """The frequency to set a laser to: the measured component and the shift, else the centroid and the offset."""
-        if self.measured is not None:
-            return self.measured.value + self.shift_mhz
+        measured = self.measured
+        if measured is not None:
+            return measured.value + self.shift_mhz
         return None if self.line.centroid is None else self.line.centroid.value + self.offset_mhz
 
     @property
     def frequency_uncertainty_mhz(self) -> float | None:
         """Standard uncertainty of the frequency, both its parts in quadrature; None where either is unknown."""
-        start, which = (self.measured, SHIFT) if self.measured is not None else (self.line.centroid, ENERGY)
-        moved = float(self.spread.uncertainty[which, 0, 0])
-        if start is None or start.uncertainty is None or np.isnan(moved):
+        measured = self.measured
+        start, which = (self.line.centroid, ENERGY) if measured is None else (measured, SHIFT)
+        moved = self.spread.uncertainty.item(which)
+        if start is None or start.uncertainty is None or math.isnan(moved):
             return None
-        return float(np.hypot(start.uncertainty, moved))
+        return math.hypot(start.uncertainty, moved)
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -125,6 +128,8 @@ class Components:
 
 def measured_component(line: Line, twice_F: int, twice_F_up: int) -> Quantity | None:
     """Return the measured zero-field frequency in MHz of one hyperfine component, or None."""
+    if not line.measured:
+        return None
     return next((known for low, up, known in line.measured if (low, up) == (twice_F, twice_F_up)), None)
 
 
