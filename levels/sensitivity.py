@@ -17,7 +17,9 @@ which enters once.
 
 Some constants have no stated uncertainty (a Lande factor by formula, a value printed without one). Nothing is guessed
 for them: they are named, and where a change by `UNSTATED_SHARE` of its size would move a number by more than the rest
-is uncertain, that number has no uncertainty (NaN). Measured g_J depart from the coupling formulas by about that share.
+is uncertain, that number has no uncertainty (NaN). Measured g_J of S, P and D doublets depart from the LS formula by
+about that share (133Cs 6P3/2 1.5e-5, 138Ba+ 5D5/2 8e-5); of other levels by up to `COUPLED_SHARE` (174Yb 3P1 0.6 %,
+199Hg 3P1 1 %), for coupling there is only nearly pure.
 The second-order mixing of `multiplet` is treated alike, at `MIXING_SHARE`.
 """
 
@@ -38,6 +40,8 @@ NAMES = ("A", "B", "C", "g_J", "g_I")
 MIXING = len(NAMES)  # the row after the constants: the second-order mixing, per relative change
 ENERGY, SLOPE, QUADRATIC, SHIFT = range(4)
 UNSTATED_SHARE = 1e-4
+COUPLED_SHARE = 1e-2
+DOUBLETS = ("2S", "2P", "2D")
 MIXING_SHARE = 1e-2
 CANCELLED = 1e-12  # of a contribution: what is left of two that are equal and opposite, beyond rounding
 
@@ -135,8 +139,8 @@ def terms_of(level: Level, moved: Movement, sign: float = 1.0) -> Terms:
     Two levels that rest on the same published g_I share its key, so that their contributions add before squaring.
     """
     constants = (level.A, level.B, level.C, level.g_J, level.g_I, None)
-    own = level.name
-    keys = (("A", own), ("B", own), ("C", own), ("g_J", own), ("g_I", level.g_I), ("mixing", own))
+    own, pure = level.name, level.coupling == "LS" and level.term in DOUBLETS
+    keys = (("A", own), ("B", own), ("C", own), ("g_J", own, pure), ("g_I", level.g_I), ("mixing", own))
     names = (
         f"A({own})",
         f"B({own})",
@@ -227,4 +231,7 @@ def _share(constant: Quantity | None, key: Hashable) -> float:
     """The change to allow for in a constant without a stated uncertainty; 0 where one is stated or nothing is known."""
     if constant is None:
         return MIXING_SHARE if isinstance(key, tuple) and key[0] == "mixing" else 0.0
-    return UNSTATED_SHARE * abs(constant.value) if constant.uncertainty is None else 0.0
+    if constant.uncertainty is not None:
+        return 0.0
+    formula = isinstance(key, tuple) and key[0] == "g_J" and constant.evidence == "computed" and not key[2]
+    return (COUPLED_SHARE if formula else UNSTATED_SHARE) * abs(constant.value)

@@ -185,6 +185,20 @@ def test_a_number_that_rests_on_unstated_constants_has_no_uncertainty() -> None:
     assert found.excludes == ("g_J(5p_2P3/2)",)
 
 
+def test_a_lande_factor_of_a_coupled_level_counts_for_more_than_a_doublet() -> None:
+    """Coupling of 3P1 is only nearly pure: a stated rest that outweighs the formula of a doublet does not there."""
+    formula = replace(quantity(1.5), evidence="computed")
+    of = replace(level(2, 3, 1000.0, name="6s.6p_3P1", spread={"A": 0.05}), g_J=formula, g_I=quantity(0.0, 1e-9))
+    fields = np.array([5.0])
+    shifts = {}
+    for term in ("3P", "2P"):
+        named = replace(of, term=term)
+        eigen = solve_block(constants_of(named), 5, fields)
+        shifts[term] = spread(terms_of(named, movement(eigen, fields))).uncertainty[ENERGY, 0, 0]
+    assert np.isnan(shifts["3P"])
+    assert shifts["2P"] == pytest.approx(1.5 * 0.05, rel=1e-9)  # F = I + J: energy A I J
+
+
 def test_a_shift_made_by_mixing_alone_has_no_uncertainty() -> None:
     """The quadratic shift of a 3P0 level rests on LS coupling: its uncertainty is unknown and the answer says why."""
     clock = replace(level(0, 0, name="5s.5p_3P0"), term="3P", neighbours=((2, 5.6e6),))
